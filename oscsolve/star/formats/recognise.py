@@ -1,0 +1,65 @@
+"""Which format a file is in, told by its content, and the public read and write functions."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Callable
+from dataclasses import dataclass
+
+from oscsolve.errors import InputError
+from oscsolve.star.formats import fgong
+from oscsolve.star.formats.files import checked_path, read_head
+from oscsolve.star.model import StarModel
+
+
+@dataclass(frozen=True)
+class Format:
+    """One file format: how it is recognised, read and written.
+
+    Attributes
+    ----------
+    name : short name, used as `format`
+    recognise : head of a file (bytes) to bool
+    read : ``read(path, *, gravitational_constant=None) -> StarModel``
+    write : ``write(star, path)``, or None if the format is only read
+    suffixes : file endings that choose the format on writing
+    """
+
+    name: str
+    recognise: Callable[[bytes], bool]
+    read: Callable[..., StarModel]
+    write: Callable[..., None] | None = None
+    suffixes: tuple[str, ...] = ()
+
+
+FORMATS = (Format("fgong", fgong.recognise, fgong.read),)
+
+
+def read_model(
+    path: str | os.PathLike[str], *, gravitational_constant: float | None = None
+) -> StarModel:
+    """The star in a file of any known format, recognised by what the file holds.
+
+    Parameters
+    ----------
+    path : file to read.
+    gravitational_constant : cm^3 g^-1 s^-2; replaces the G in the file or the estimated one.
+
+    Raises
+    ------
+    InputError
+        The file cannot be opened, is in no known format, or is damaged; the message names the
+        line or point.
+    ModelError
+        The numbers can be read but make no star.
+    """
+    file = checked_path(path)
+    head = read_head(file)
+    for known in FORMATS:
+        if known.recognise(head):
+            return known.read(file, gravitational_constant=gravitational_constant)
+    kind = "binary" if b"\0" in head else "text"
+    raise InputError(
+        f"{file}: this {kind} file is in no known format "
+        f"({', '.join(known.name for known in FORMATS)}); export the model as FGONG"
+    )
