@@ -1,5 +1,5 @@
 """Reading and writing stellar models; one file a format."""
 
-from oscsolve.star.formats.recognise import read_model
+from oscsolve.star.formats.recognise import FORMATS, Format, read_model, write_model
 
-__all__ = ["read_model"]
+__all__ = ["FORMATS", "Format", "read_model", "write_model"]

@@ -5,9 +5,10 @@ from __future__ import annotations
 import os
 from collections.abc import Callable
 from dataclasses import dataclass
+from pathlib import Path
 
 from oscsolve.errors import InputError
-from oscsolve.star.formats import fgong
+from oscsolve.star.formats import fgong, hdf5
 from oscsolve.star.formats.files import checked_path, read_head
 from oscsolve.star.model import StarModel
 
@@ -21,7 +22,7 @@ class Format:
     name : short name, used as `format`
     recognise : head of a file (bytes) to bool
     read : ``read(path, *, gravitational_constant=None) -> StarModel``
-    write : ``write(star, path)``, or None if the format is only read
+    write : ``write(star, path, *, overwrite=False)``, or None if the format is only read
     suffixes : file endings that choose the format on writing
     """
 
@@ -32,7 +33,10 @@ class Format:
     suffixes: tuple[str, ...] = ()
 
 
-FORMATS = (Format("fgong", fgong.recognise, fgong.read),)
+FORMATS = (
+    Format("hdf5", hdf5.recognise, hdf5.read, hdf5.write, (".h5", ".hdf5")),
+    Format("fgong", fgong.recognise, fgong.read, fgong.write, (".fgong",)),
+)
 
 
 def read_model(
@@ -63,3 +67,43 @@ def read_model(
         f"{file}: this {kind} file is in no known format "
         f"({', '.join(known.name for known in FORMATS)}); export the model as FGONG"
     )
+
+
+def write_model(
+    star: StarModel,
+    path: str | os.PathLike[str],
+    *,
+    format: str | None = None,
+    overwrite: bool = False,
+) -> None:
+    """Write a star to a file; the file appears complete or not at all.
+
+    Parameters
+    ----------
+    star : model to write.
+    path : file to make.
+    format : "fgong" or "hdf5"; None takes it from the ending (.fgong, .h5, .hdf5).
+    overwrite : replace an existing file.
+
+    Raises
+    ------
+    InputError
+        The format is not known or not written here, the file exists and `overwrite` is false,
+        or the folder cannot be written.
+    """
+    file = Path(path)
+    writers = {known.name: known for known in FORMATS if known.write is not None}
+    if format is None:
+        chosen = [k for k in writers.values() if file.suffix.lower() in k.suffixes]
+        if not chosen:
+            raise InputError(
+                f"{file}: the ending {file.suffix!r} names no format; end the name in .fgong or "
+                f".h5, or give format ({' or '.join(writers)})"
+            )
+        known = chosen[0]
+    elif format in writers:
+        known = writers[format]
+    else:
+        raise InputError(f"format {format!r} cannot be written; use {' or '.join(writers)}")
+    assert known.write is not None
+    known.write(star, file, overwrite=overwrite)
