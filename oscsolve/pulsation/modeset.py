@@ -182,7 +182,9 @@ class ModeSet:
             The run kept no eigenfunctions, or there is no such mode.
         """
         if self.eigenfunctions is None:
-            raise InputError("this mode list holds no eigenfunctions; solve with eigenfunctions=True")
+            raise InputError(
+                "this mode list holds no eigenfunctions; solve with eigenfunctions=True"
+            )
         if not -len(self) <= index < len(self):
             raise InputError(f"mode index {index} is outside the list of {len(self)} modes")
         rows = self.eigenfunctions

@@ -129,9 +129,7 @@ class Profile:
     ) -> np.ndarray:
         lnw_step = np.log(self._w[j] / self._w[i])
         lnrho_step = np.log(self._rho[j] / self._rho[i])
-        index = np.divide(
-            lnrho_step, lnw_step, out=np.zeros_like(h), where=np.abs(lnw_step) > 1e-3
-        )
+        index = np.divide(lnrho_step, lnw_step, out=np.zeros_like(h), where=np.abs(lnw_step) > 1e-3)
         index = np.clip(index, 0.0, _LARGEST_INDEX)
         ends = []
         for p in (i, j):
@@ -183,7 +181,12 @@ def _even_limit(x: np.ndarray, f: np.ndarray) -> float:
 
 
 def _with_centre(
-    x: np.ndarray, q: np.ndarray, rho: np.ndarray, w: np.ndarray, beta: np.ndarray, gamma1: np.ndarray
+    x: np.ndarray,
+    q: np.ndarray,
+    rho: np.ndarray,
+    w: np.ndarray,
+    beta: np.ndarray,
+    gamma1: np.ndarray,
 ) -> tuple[np.ndarray, ...]:
     """Columns with a centre point in front: f(0) = f - x f'/2 for f = f0 + f2 x^2."""
     g = q[0] * x[0]

@@ -21,7 +21,7 @@ _STEP = 0.22
 #: Points of the model in each Taylor step.
 _POINTS_PER_STEP = 16
 #: The model's last point before its edge lies this far inside it, in fractional radius.
-_EDGE = 1e-7
+_EDGE = 1e-9
 #: Outermost part that is graded geometrically towards the edge, and the ratio of the grading.
 _GRADED, _RATIO = 0.02, 0.8
 

@@ -1,0 +1,275 @@
+"""Inverse iteration with the action: one sweep down and up, and the quotient that polishes lam.
+
+Written with y = (p1 + z)/lam = rho r xi_h at the Gauss points as a further unknown, the action
+is linear in lam (method of the linear pencil):
+
+    S = 1/2 b0 p1^2 - b1 y z + 1/2 (q2' - c21 q1)^2/b22 - 1/2 d0 q1^2 - 1/2 d2 q2^2 + lam T,
+    T = 1/2 b1 y^2 - 1/2 d1 q1^2,        p1 = (e - b1 y)/b0.
+
+One step solves A(lam) (q, y) = dT/d(q, y) at the previous vector and sets lam <- lam - S/T, the
+Rayleigh quotient: it converges from anywhere and cubically near a mode. Eliminating y gives the
+matrix of `sweep`, and with y0 the previous y
+
+    y = (e + b0 z + b0 y0)/(lam B11),     p1 = lam y - z - y0,
+
+the second free of the cancellation in e - b1 y. S and T are summed cell by cell from differences
+of nodal values, which keeps round-off near that of the numbers themselves instead of eps/h^2.
+(Iterating with y taken from q alone, without y0, does not converge: T is then singular wherever
+B11 is nearly zero.)
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from oscsolve.pulsation.boundary import surface_term
+from oscsolve.pulsation.compiled import LANES, compiled
+from oscsolve.pulsation.sweep import Action, _assemble, _join
+
+
+class Workspace:
+    """Arrays of one inverse iteration, reused between steps.
+
+    Attributes
+    ----------
+    vector : (nodes * dof, LANES) nodal values of q, centre first
+    swing : (cells, s, LANES) y at the Gauss points
+    rows : (cells, pivots, size, LANES) the factors of the elimination
+    negative : (LANES,) int64, eigenvalues of the action below zero at lam
+    step : (LANES,) -S/T, what to add to lam
+    energy : (LANES,) 2 T of the vector before it was scaled to T = 1/2
+    """
+
+    def __init__(self, action: Action) -> None:
+        stages, nodes = action.value.shape
+        cells, dof = action.width.size, action.dof
+        self.vector = np.empty(((cells * stages + 1) * dof, LANES))
+        self.swing = np.zeros((cells, stages, LANES))
+        self.rows = np.empty((cells, dof * (nodes - 1), dof * nodes, LANES))
+        self.negative = np.zeros(LANES, np.int64)
+        self.step = np.empty(LANES)
+        self.energy = np.empty(LANES)
+
+    def iterate(self, action: Action, lam: np.ndarray) -> None:
+        """Replace `vector` by the next iterate at `lam`, and fill negative, step and energy."""
+        inverse_step(
+            action,
+            lam,
+            self.vector,
+            self.swing,
+            self.rows,
+            self.negative,
+            self.step,
+            self.energy,
+        )
+
+
+@compiled
+def inverse_step(action, lam, vector, swing, rows, negative, step, energy):
+    """One step of inverse iteration in every lane; arguments as in `Workspace`."""
+    mu = np.empty(LANES)
+    for j in range(LANES):
+        negative[j] = 0
+        mu[j] = 1.0 / lam[j] if action.ll > 0.0 else 0.0
+    _eliminate(action, lam, mu, vector, swing, rows, negative)
+    _substitute(action, vector, rows)
+    _quotient(action, lam, mu, vector, swing, step, energy)
+
+
+@compiled
+def _point_values(action, cell, k, vector, j):
+    """q1, h (q1' - c11 q1) and z at Gauss point k, and q2, h (q2' - c21 q1)."""
+    dof, stages = action.dof, action.value.shape[0]
+    point = action.point[cell, k]
+    base = cell * stages * dof
+    end = base + stages * dof
+    right1, right2 = vector[end, j], vector[end + dof - 1, j]
+    q1, q2, s1, s2 = right1, right2, 0.0, 0.0
+    for i in range(stages):
+        node = base + dof * (i + 1) if i < stages - 1 else base
+        v, s = action.value[k, i], action.slope[k, i]
+        difference = vector[node, j] - right1
+        q1 += v * difference
+        s1 += s * difference
+        if dof == 2:
+            difference = vector[node + 1, j] - right2
+            q2 += v * difference
+            s2 += s * difference
+    h = action.width[cell]
+    z = point[2] * q1 + point[3] * q2
+    return q1, s1 - h * point[5] * q1, z, q2, s2 - h * point[6] * q1
+
+
+@compiled
+def _energy_gradient(action, cell, mu, vector, swing, right_side):
+    """Derivative of T by the nodal q of one cell, that by y eliminated."""
+    dof, stages = action.dof, action.value.shape[0]
+    h = action.width[cell]
+    right_side[:] = 0.0
+    for k in range(stages):
+        b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = action.point[cell, k]
+        for j in range(LANES):
+            q1, e, z, q2, f = _point_values(action, cell, k, vector, j)
+            b11 = b0 + b1 * mu[j]
+            if b11 == 0.0:
+                b11 = -1e-300
+            inertia = -action.weight[k] * h * d1 * q1
+            push = action.weight[k] * b1 * mu[j] * swing[cell, k, j] / b11
+            for i in range(stages + 1):
+                v = action.value[k, i]
+                right_side[dof * i, j] += inertia * v + push * (
+                    action.slope[k, i] + h * (b0 * s1 - c11) * v
+                )
+                if dof == 2:
+                    right_side[2 * i + 1, j] += push * h * b0 * s2 * v
+
+
+@compiled
+def _eliminate(action, lam, mu, vector, swing, rows, negative):
+    """Factor the action and carry the right side along; leaves it in `vector`."""
+    dof = action.dof
+    stages, nodes = action.value.shape
+    cells = action.width.size
+    size, inner = dof * nodes, dof * (nodes - 2)
+    right = inner + dof
+    matrix = np.empty((size, size, LANES))
+    carry = np.zeros((dof, dof, LANES))
+    side = np.empty((size, LANES))
+    side_carry = np.zeros((dof, LANES))
+    inverse, factor = np.empty(LANES), np.empty(LANES)
+    for cell in range(cells):
+        _assemble(action, cell, lam, mu, matrix, negative)
+        _energy_gradient(action, cell, mu, vector, swing, side)
+        last = _join(action, cell, carry, matrix)
+        for j in range(LANES):
+            for a in range(dof):
+                if cell == 0:
+                    side[right + a, j] -= side[inner + a, j]
+                else:
+                    side[inner + a, j] += side_carry[a, j]
+                    side[right + a, j] += side_carry[a, j]
+        for p in range(last):
+            for j in range(LANES):
+                inverse[j] = 1.0 / matrix[p, p, j]
+                if inverse[j] < 0.0:
+                    negative[j] += 1
+                rows[cell, p, p, j] = inverse[j]
+            for a in range(p + 1, size):
+                for j in range(LANES):
+                    factor[j] = matrix[p, a, j] * inverse[j]
+                    rows[cell, p, a, j] = factor[j]
+                    side[a, j] -= factor[j] * side[p, j]
+                for b in range(a, size):
+                    for j in range(LANES):
+                        matrix[a, b, j] -= factor[j] * matrix[p, b, j]
+        base = cell * stages * dof
+        for p in range(right):
+            node = base + dof + p if p < inner else base + p - inner
+            for j in range(LANES):
+                # q vanishes at the centre, which is not among the unknowns.
+                vector[node, j] = side[p, j] if p < last else 0.0
+        for j in range(LANES):
+            for a in range(dof):
+                side_carry[a, j] = side[right + a, j]
+                for b in range(a, dof):
+                    carry[a, b, j] = matrix[right + a, right + b, j]
+    base = cells * stages * dof
+    for j in range(LANES):
+        k11, k12, k22, t11, t12, t22, hidden = surface_term(action.top, lam[j], mu[j])
+        negative[j] += hidden
+        first = carry[0, 0, j] + k11
+        y1 = side_carry[0, j] + t11 * vector[base, j]
+        if first < 0.0:
+            negative[j] += 1
+        if dof == 2:
+            y1 += t12 * vector[base + 1, j]
+            y2 = side_carry[1, j] + t12 * vector[base, j] + t22 * vector[base + 1, j]
+            coupling = carry[0, 1, j] + k12
+            second = carry[1, 1, j] + k22 - coupling * coupling / first
+            if second < 0.0:
+                negative[j] += 1
+            vector[base + 1, j] = (y2 - coupling * y1 / first) / second
+            y1 -= coupling * vector[base + 1, j]
+        vector[base, j] = y1 / first
+
+
+@compiled
+def _substitute(action, vector, rows):
+    """Back substitution, surface to centre: differences from the right node, then nodal values."""
+    dof = action.dof
+    stages, nodes = action.value.shape
+    size, inner = dof * nodes, dof * (nodes - 2)
+    right = inner + dof
+    for cell in range(action.width.size - 1, -1, -1):
+        base = cell * stages * dof
+        end = base + stages * dof
+        last = inner if cell == 0 else right
+        for p in range(last - 1, -1, -1):
+            node = base + dof + p if p < inner else base + p - inner
+            for j in range(LANES):
+                vector[node, j] *= rows[cell, p, p, j]
+            for a in range(p + 1, size):
+                if a < inner:
+                    other = base + dof + a
+                elif a < right:
+                    other = base + a - inner
+                else:
+                    other = end + a - right
+                for j in range(LANES):
+                    vector[node, j] -= rows[cell, p, a, j] * vector[other, j]
+        for p in range(last):
+            node = base + dof + p if p < inner else base + p - inner
+            for j in range(LANES):
+                vector[node, j] += vector[end + p % dof, j]
+
+
+@compiled
+def _quotient(action, lam, mu, vector, swing, step, energy):
+    """S and T of the vector, summed from positive and negative squares; scales it to T = 1/2."""
+    dof = action.dof
+    stages = action.value.shape[0]
+    cells = action.width.size
+    base = cells * stages * dof
+    total = np.zeros(LANES)
+    for j in range(LANES):
+        energy[j] = 0.0
+    for cell in range(cells):
+        h = action.width[cell]
+        node = cell * stages * dof
+        for j in range(LANES):
+            total[j] += action.node_term[cell] * vector[node, j] ** 2
+        for k in range(stages):
+            b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = action.point[cell, k]
+            w = action.weight[k] * h
+            for j in range(LANES):
+                q1, e, z, q2, f = _point_values(action, cell, k, vector, j)
+                e, f = e / h, f / h
+                b11 = b0 + b1 * mu[j]
+                if b11 == 0.0:
+                    b11 = -1e-300
+                y0 = swing[cell, k, j]
+                y = mu[j] * (e + b0 * (z + y0)) / b11
+                p1 = lam[j] * y - z - y0 if action.ll > 0.0 else e / b0
+                potential = b0 * p1 * p1 - 2.0 * b1 * y * z - d0 * q1 * q1
+                if dof == 2:
+                    potential += f * f / b22 - d2 * q2 * q2
+                kinetic = b1 * y * y - d1 * q1 * q1
+                total[j] += w * (potential + lam[j] * kinetic)
+                energy[j] += w * kinetic
+                swing[cell, k, j] = y
+    for j in range(LANES):
+        k11, k12, k22, t11, t12, t22, _ = surface_term(action.top, lam[j], mu[j])
+        q1 = vector[base, j]
+        total[j] += k11 * q1 * q1
+        energy[j] += t11 * q1 * q1
+        if dof == 2:
+            q2 = vector[base + 1, j]
+            total[j] += 2.0 * k12 * q1 * q2 + k22 * q2 * q2
+            energy[j] += 2.0 * t12 * q1 * q2 + t22 * q2 * q2
+        step[j] = -total[j] / energy[j]
+        scale = 1.0 / np.sqrt(abs(energy[j]))
+        for i in range(base + dof):
+            vector[i, j] *= scale
+        for cell in range(cells):
+            for k in range(stages):
+                swing[cell, k, j] *= scale

@@ -1,0 +1,267 @@
+"""From counts to isolated, polished eigenvalues of one degree on one mesh."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from oscsolve.errors import IncompleteError
+from oscsolve.pulsation.compiled import LANES
+from oscsolve.pulsation.inverse import Workspace
+from oscsolve.pulsation.mesh import Element, Mesh, lagrange_basis
+from oscsolve.pulsation.sweep import Action, count_negative
+from oscsolve.star.profile import Profile
+
+#: Polishing stops when the Rayleigh quotient moves by less than this, relative.
+_SETTLED = 3e-14
+_MOST_STEPS = 60
+#: Relative width of a bracket that cannot be split any further.
+_NARROWEST = 4e-15
+
+
+@dataclass(frozen=True, eq=False)
+class Brackets:
+    """Intervals of lam that hold exactly one eigenvalue each, in rising order.
+
+    Attributes
+    ----------
+    low, high : (m,) limits
+    negative : (m,) int, negative eigenvalues of the action at `low`; one less at `high`
+    """
+
+    low: np.ndarray
+    high: np.ndarray
+    negative: np.ndarray
+
+
+@dataclass(frozen=True, eq=False)
+class Solution:
+    """Eigenvalues and eigenvectors of one action.
+
+    Attributes
+    ----------
+    lam : (m,) eigenvalues, sigma2
+    negative : (m,) int, negative eigenvalues of the action just below each
+    vector : (m, nodes * dof) nodal q
+    swing : (m, cells, s) y = rho r xi_h at the Gauss points
+    """
+
+    lam: np.ndarray
+    negative: np.ndarray
+    vector: np.ndarray
+    swing: np.ndarray
+
+    def select(self, keep: np.ndarray) -> Solution:
+        """The solution restricted to some of its modes."""
+        return Solution(self.lam[keep], self.negative[keep], self.vector[keep], self.swing[keep])
+
+
+def count_at(action: Action, lam: np.ndarray) -> np.ndarray:
+    """(k,) int, negative eigenvalues of the action at each of the (k,) values of lam."""
+    counts = np.empty(lam.size, np.int64)
+    negative = np.zeros(LANES, np.int64)
+    for start in range(0, lam.size, LANES):
+        batch = lam[start : start + LANES]
+        padded = np.full(LANES, batch[-1])
+        padded[: batch.size] = batch
+        count_negative(action, padded, negative)
+        counts[start : start + LANES] = negative[: batch.size]
+    return counts
+
+
+class PhaseCoordinate:
+    """A coordinate in which modes are about evenly spaced: phase of p waves minus phase of g waves.
+
+    Only where trial frequencies are placed depends on it, never what is found.
+    """
+
+    def __init__(self, profile: Profile, mesh: Mesh, degree: int, low: float, high: float) -> None:
+        at = profile.at(0.5 * (mesh.node[:-1] + mesh.node[1:]), mesh.interval)
+        width = np.diff(mesh.node)
+        if low > 0.0:
+            self.lam = np.geomspace(low, high, 129)
+        else:
+            self.lam = np.linspace(low, high, 129)
+        self.phase = np.empty(self.lam.size)
+        lamb = degree * (degree + 1) * at.c2 / at.x**2
+        for i, lam in enumerate(self.lam):
+            if degree == 0:
+                waves = np.sqrt(np.maximum(lam / at.c2, 0.0))
+            else:
+                k2 = (lam - at.n2) * (lam - lamb) / (lam * at.c2)
+                waves = np.sqrt(np.maximum(k2, 0.0)) * np.where(lam > lamb, 1.0, -1.0)
+            self.phase[i] = np.sum(waves * width) / np.pi
+        self.phase = np.maximum.accumulate(self.phase) + np.linspace(0.0, 1.0, self.lam.size)
+
+    def between(self, low: float, high: float, parts: int) -> np.ndarray:
+        """(parts - 1,) values of lam that cut (low, high) evenly; always strictly inside."""
+        ends = np.interp((low, high), self.lam, self.phase)
+        share = np.arange(1, parts) / parts
+        cuts = np.interp(ends[0] + share * (ends[1] - ends[0]), self.phase, self.lam)
+        even = low + share * (high - low)
+        margin = 0.02 * (high - low) / parts
+        inside = np.all(np.diff(np.concatenate(([low], cuts, [high]))) > margin)
+        return cuts if inside else even
+
+
+def isolate(
+    action: Action, low: float, high: float, place: Callable[[float, float, int], np.ndarray]
+) -> Brackets:
+    """Cut the band until every piece holds one eigenvalue.
+
+    Parameters
+    ----------
+    action : the discrete action
+    low, high : the band in lam
+    place : ``place(low, high, parts)`` returns where to cut
+
+    Raises
+    ------
+    IncompleteError
+        Two eigenvalues agree to round-off and cannot be told apart.
+    """
+    first, last = count_at(action, np.array([low, high]))
+    done: list[tuple[float, float, int]] = []
+    work = [(low, high, int(first), int(last))]
+    while work:
+        share = max(1, 2 * LANES // len(work))
+        cuts = []
+        for a, b, above, below in work:
+            if b - a <= _NARROWEST * max(abs(a), abs(b)):
+                raise IncompleteError(
+                    f"{above - below} modes agree to round-off near sigma2 = {a:.16g}; "
+                    "they cannot be told apart on this mesh"
+                )
+            parts = max(2, min(share + 1, 2 * (above - below)))
+            cuts.append(place(a, b, parts))
+        counts = count_at(action, np.concatenate(cuts))
+        position, pieces = 0, []
+        for (a, b, above, below), cut in zip(work, cuts, strict=True):
+            edges = [a, *cut, b]
+            values = [above, *counts[position : position + cut.size], below]
+            position += cut.size
+            pieces += list(zip(edges[:-1], edges[1:], values[:-1], values[1:], strict=True))
+        work = [(a, b, int(m), int(n)) for a, b, m, n in pieces if m - n > 1]
+        done += [(a, b, int(m)) for a, b, m, n in pieces if m - n == 1]
+    done.sort()
+    columns = list(zip(*done, strict=True)) if done else ([], [], [])
+    return Brackets(
+        np.array(columns[0], float), np.array(columns[1], float), np.array(columns[2], np.int64)
+    )
+
+
+def random_start(action: Action, modes: int) -> tuple[np.ndarray, np.ndarray]:
+    """Vectors and swings of white noise in the metric of the kinetic energy, always the same."""
+    generator = np.random.default_rng(20260101)
+    stages = action.weight.size
+    cells = action.width.size
+    inertia = np.sqrt(-action.point[:, :, 8])
+    nodal = np.zeros((modes, cells * stages + 1, action.dof))
+    signs = generator.choice((-1.0, 1.0), size=(modes, cells, stages))
+    nodal[:, 1:, 0] = (signs / inertia).reshape(modes, -1)
+    swing = np.zeros((modes, cells, stages))
+    if action.ll > 0.0:
+        signs = generator.choice((-1.0, 1.0), size=(modes, cells, stages))
+        swing = signs / np.sqrt(action.point[:, :, 1])
+    return nodal.reshape(modes, -1), swing
+
+
+def polish(
+    action: Action,
+    brackets: Brackets,
+    guess: np.ndarray | None = None,
+    start: tuple[np.ndarray, np.ndarray] | None = None,
+) -> Solution:
+    """Eigenvalues and eigenvectors inside brackets, by fenced inverse iteration.
+
+    Parameters
+    ----------
+    action : the discrete action
+    brackets : one eigenvalue each
+    guess : (m,) starting values, the middle of each bracket where left out
+    start : vectors and swings to start from, white noise where left out
+
+    Raises
+    ------
+    IncompleteError
+        An iteration did not settle.
+    """
+    modes = brackets.low.size
+    guess = 0.5 * (brackets.low + brackets.high) if guess is None else guess
+    vector, swing = random_start(action, modes) if start is None else start
+    work = Workspace(action)
+    out = Solution(np.empty(modes), brackets.negative, np.empty_like(vector), np.empty_like(swing))
+    for first in range(0, modes, LANES):
+        lanes = np.minimum(np.arange(first, first + LANES), modes - 1)
+        work.vector[:] = vector[lanes].T
+        work.swing[:] = np.moveaxis(swing[lanes], 0, -1)
+        lam = _iterate(action, work, brackets, lanes, guess[lanes])
+        kept = slice(first, min(first + LANES, modes))
+        size = kept.stop - first
+        out.lam[kept] = lam[:size]
+        out.vector[kept] = work.vector.T[:size]
+        out.swing[kept] = np.moveaxis(work.swing, -1, 0)[:size]
+    return out
+
+
+def _iterate(
+    action: Action, work: Workspace, brackets: Brackets, lanes: np.ndarray, guess: np.ndarray
+) -> np.ndarray:
+    """Rayleigh quotient iteration in all lanes, fenced by brackets that the counts tighten."""
+    low, high = brackets.low[lanes].copy(), brackets.high[lanes].copy()
+    lam = np.array(guess)
+    for _ in range(_MOST_STEPS):
+        work.iterate(action, lam)
+        below = work.negative >= brackets.negative[lanes]
+        low, high = (
+            np.where(below, np.maximum(low, lam), low),
+            np.where(below, high, np.minimum(high, lam)),
+        )
+        new = lam + work.step
+        scale = np.maximum(np.abs(lam), 1e-300)
+        settled = np.abs(work.step) <= _SETTLED * scale
+        slack = 10.0 * _SETTLED * scale
+        outside = (new < low - slack) | (new > high + slack) | ~np.isfinite(new)
+        if np.all(settled & ~outside):
+            return new
+        lam = np.where(outside, 0.5 * (low + high), new)
+    worst = lanes[np.argmax(np.where(outside, np.inf, np.abs(work.step / scale)))]
+    raise IncompleteError(
+        f"the mode between sigma2 = {brackets.low[worst]:.10g} and {brackets.high[worst]:.10g} "
+        "did not settle"
+    )
+
+
+def transfer(
+    solution: Solution, dof: int, old: tuple[Mesh, Element], new: tuple[Mesh, Element]
+) -> tuple[np.ndarray, np.ndarray]:
+    """Vectors and swings of a solution on another mesh or of another order, to start from.
+
+    The new mesh holds every node of the old one.
+    """
+    (old_mesh, old_element), (new_mesh, new_element) = old, new
+    width = np.diff(old_mesh.node)
+    home = np.searchsorted(old_mesh.node, new_mesh.node[:-1] * (1.0 + 1e-15), side="right") - 1
+    home = np.clip(home, 0, old_mesh.size - 1)
+    step = np.diff(new_mesh.node)
+    offset = (new_mesh.node[:-1] - old_mesh.node[home]) / width[home]
+    ratio = step / width[home]
+    stages = old_element.gauss.size
+    modes = solution.lam.size
+    nodal = solution.vector.reshape(modes, -1, dof)
+    index = home[:, None] * stages + np.arange(stages + 1)
+    nodes = nodal[:, index]
+    vector = np.zeros((modes, new_mesh.size * new_element.gauss.size + 1, dof))
+    swing = np.empty((modes, new_mesh.size, new_element.gauss.size))
+    shapes = np.round(np.stack((offset, ratio), axis=1), 12)
+    kinds, kind = np.unique(shapes, axis=0, return_inverse=True)
+    for number, (shift, scale) in enumerate(kinds):
+        cells = np.flatnonzero(kind.ravel() == number)
+        inner = lagrange_basis(old_element.lobatto, shift + scale * new_element.lobatto[1:])
+        where = cells[:, None] * new_element.gauss.size + np.arange(1, new_element.lobatto.size)
+        vector[:, where] = np.einsum("kj,mcjd->mckd", inner, nodes[:, cells])
+        gauss = lagrange_basis(old_element.gauss, shift + scale * new_element.gauss)
+        swing[:, cells] = np.einsum("kj,mcj->mck", gauss, solution.swing[:, home[cells]])
+    return vector.reshape(modes, -1), swing
