@@ -65,3 +65,83 @@ def _equal_falls(fall: np.ndarray) -> np.ndarray:
     rising = np.maximum.accumulate(fall)
     marks = np.linspace(0.0, rising[-1], _GRAVITY_GROUPS + 1)
     return np.unique(np.clip(np.searchsorted(rising, marks), 0, fall.size - 1))
+
+
+def derive_a_star(
+    radius: np.ndarray,
+    mass: np.ndarray,
+    pressure: np.ndarray,
+    density: np.ndarray,
+    gamma1: np.ndarray,
+    gravitational_constant: float,
+    rounding: float = 0.0,
+) -> tuple[np.ndarray, int]:
+    """A* from pressure and density, and how many points needed a wider stencil.
+
+    Parameters
+    ----------
+    radius, mass, pressure, density, gamma1 : (n,) cgs units, radius never falling; a repeated
+        radius is a density jump, across which nothing is differentiated.
+    gravitational_constant : cm^3 g^-1 s^-2
+    rounding : relative rounding of `pressure` and `density`
+
+    Returns
+    -------
+    a_star, widened : (n,), and the number of points whose neighbours differ by too little to
+        be differentiated.
+
+    Notes
+    -----
+    A* = V (dln rho/dlnP - 1/Gamma1) with V = G m rho / (r P), which is -dlnP/dlnr in
+    hydrostatic balance and needs no difference. Only dln rho/dlnP is a difference: the slope of
+    the parabola through three points, second order on any spacing. Where the three points span
+    less than 1000 roundings of ln P, a line is fitted to as many points as that takes.
+    """
+    positive = (pressure > 0.0) & (density > 0.0)
+    lnp, lnd = (np.log(np.where(positive, values, 1.0)) for values in (pressure, density))
+    slope = np.zeros(radius.size)
+    widened = 0
+    points = np.flatnonzero(positive)
+    cuts = np.flatnonzero(np.diff(radius) == 0.0) + 1
+    for block in np.split(points, np.searchsorted(points, cuts)):
+        if block.size >= 2:
+            slope[block], wide = _slope(lnp[block], lnd[block], 1e3 * rounding)
+            widened += wide
+    strength = np.divide(
+        gravitational_constant * mass * density,
+        radius * pressure,
+        out=np.zeros(radius.size),
+        where=(radius > 0.0) & positive,
+    )
+    return strength * (slope - 1.0 / gamma1), widened
+
+
+def _slope(x: np.ndarray, y: np.ndarray, least: float) -> tuple[np.ndarray, int]:
+    """dy/dx at each point, and the number of points where `least` forced a wider fit."""
+    if x.size == 2:
+        step = x[1] - x[0]
+        return np.full(2, (y[1] - y[0]) / step if step else 0.0), 0
+    with np.errstate(divide="ignore", invalid="ignore"):
+        step = np.diff(x)
+        chord = np.diff(y) / step
+        out = np.empty_like(x)
+        out[1:-1] = (step[1:] * chord[:-1] + step[:-1] * chord[1:]) / (step[1:] + step[:-1])
+        out[0] = chord[0] + (chord[0] - out[1])
+        out[-1] = chord[-1] + (chord[-1] - out[-2])
+    thin = np.empty(x.size, dtype=bool)
+    thin[1:-1] = np.minimum(np.abs(step[1:]), np.abs(step[:-1])) <= 0.5 * least
+    thin[0], thin[-1] = thin[1], thin[-2]
+    thin |= ~np.isfinite(out)
+    for k in np.flatnonzero(thin).tolist():
+        out[k] = _wide_slope(x, y, k, least)
+    return out, int(np.count_nonzero(thin))
+
+
+def _wide_slope(x: np.ndarray, y: np.ndarray, k: int, least: float) -> float:
+    """Least-squares slope over the smallest window about `k` in which x spans `least`."""
+    low, high = max(k - 1, 0), min(k + 1, x.size - 1)
+    while np.ptp(x[low : high + 1]) <= least and (low > 0 or high < x.size - 1):
+        low, high = max(low - 1, 0), min(high + 1, x.size - 1)
+    dx = x[low : high + 1] - x[low : high + 1].mean()
+    spread = float(dx @ dx)
+    return float(dx @ y[low : high + 1]) / spread if spread > 0.0 else 0.0

@@ -16,6 +16,7 @@ import numpy as np
 
 from oscsolve.errors import InputError
 from oscsolve.star.formats.files import bytes_hash, read_bytes, replacing
+from oscsolve.star.formats.numbers import is_number, parse_number, rounding
 from oscsolve.star.formats.points import (
     GRAVITY_RANGE,
     Draft,
@@ -32,8 +33,6 @@ _PER_LINE = 5
 _TEXT_LINES = 4
 _FIRST_NUMBER_LINE = _TEXT_LINES + 2
 _COUNTS = re.compile(rb"^\s*(\d+)\s+(\d+)\s+(\d+)(?:\s+(-?\d+))?\s*$")
-# A mantissa, then an exponent whose letter Fortran leaves out when it needs three digits.
-_NO_LETTER = re.compile(rb"^([+-]?[0-9]*\.?[0-9]+|[+-]?[0-9]+\.)([+-][0-9]+)$")
 
 #: Place (from 0) of the point variables used here.
 _VARIABLES = {
@@ -173,7 +172,8 @@ def _read_numbers(
         for name, at in _VARIABLES.items():
             if at < layout.variables:
                 columns[name] = _parse_column(fields, at, layout, first, where)
-    return scale, columns, _rounding(head[0], width)
+    texts = [field.decode("latin-1") for field in _cut_line(head[0], _PER_LINE, width)]
+    return scale, columns, rounding(texts)
 
 
 def _field_width(head: list[bytes], count: int, where: str) -> int:
@@ -184,7 +184,7 @@ def _field_width(head: list[bytes], count: int, where: str) -> int:
     tokens = line.split()
     if rest == 0 and width >= 8:
         cut = [line[k * width : (k + 1) * width] for k in range(number)]
-        if all(_is_number(text) for text in cut):
+        if all(_is_number(field) for field in cut):
             return width
     if len(tokens) == number:
         return 0
@@ -194,30 +194,12 @@ def _field_width(head: list[bytes], count: int, where: str) -> int:
     )
 
 
-def _rounding(line: bytes, width: int) -> float:
-    """Relative rounding of a number in the file, from the digits of the largest mantissa."""
-    cut = _cut_line(line, _PER_LINE, width)
-    found = (re.match(rb"[+-]?(\d*\.?\d*)", text.strip()) for text in cut)
-    digits = max(len(match[1].replace(b".", b"")) for match in found if match)
-    return float(max(10.0 ** (1 - digits), np.finfo(float).eps))
+def _number(field: bytes) -> float:
+    return parse_number(field.decode("latin-1"))
 
 
-def _is_number(text: bytes) -> bool:
-    try:
-        _number(text)
-    except ValueError:
-        return False
-    return True
-
-
-def _number(text: bytes) -> float:
-    """One Fortran number: D exponents and exponents without a letter included."""
-    text = text.strip()
-    try:
-        return float(text)
-    except ValueError:
-        plain = text.replace(b"D", b"E").replace(b"d", b"E")
-        return float(_NO_LETTER.sub(rb"\1E\2", plain))
+def _is_number(field: bytes) -> bool:
+    return is_number(field.decode("latin-1"))
 
 
 def _cut_line(line: bytes, number: int, width: int) -> list[bytes]:
@@ -293,9 +275,7 @@ def _parse_column(
     return values
 
 
-def _parse_uneven(
-    body: bytes, layout: _Layout, width: int, first: int, where: str
-) -> np.ndarray:
+def _parse_uneven(body: bytes, layout: _Layout, width: int, first: int, where: str) -> np.ndarray:
     """(points, variables) numbers of a file whose lines differ in length."""
     lines = body.split(b"\n")
     per_point = layout.point_lines
@@ -363,8 +343,7 @@ def _note_trailing(data: bytes, layout: _Layout, draft: Draft) -> None:
         draft.note(
             "doubt",
             "lines-ignored",
-            f"{count} lines follow the {layout.points} declared points and "
-            "were ignored",
+            f"{count} lines follow the {layout.points} declared points and were ignored",
             "check the number of points on line 5",
         )
 

@@ -218,11 +218,24 @@ def _listed(values: np.ndarray) -> str:
     return shown if values.size <= 5 else f"{shown}, and {values.size - 5} more"
 
 
-def settle_gravity(draft: Draft, given: float | None, stated: float | None) -> None:
-    """Choose G: the caller's, else the file's, else the one hydrostatic balance implies."""
-    implied, scatter = estimate_gravity(
-        *(draft.columns[name] for name in ("radius", "mass", "pressure", "density"))
-    )
+def settle_gravity(
+    draft: Draft,
+    given: float | None,
+    stated: float | None,
+    estimate: tuple[float, float] | None = None,
+) -> None:
+    """Choose G: the caller's, else the file's, else the one hydrostatic balance implies.
+
+    Parameters
+    ----------
+    given, stated : cm^3 g^-1 s^-2; from the caller and from the file
+    estimate : G and its uncertainty (relative) if the reader knows a better estimate than
+        `estimate_gravity` makes from the points.
+    """
+    if estimate is None:
+        names = ("radius", "mass", "pressure", "density")
+        estimate = estimate_gravity(*(draft.columns[name] for name in names))
+    implied, scatter = estimate
     if given is not None:
         draft.scalars["gravitational_constant"] = float(given)
         said = "no G" if stated is None else f"G = {stated:.8g}"
@@ -273,8 +286,6 @@ def _settle_estimate(draft: Draft, implied: float, scatter: float) -> None:
 def make_star(draft: Draft, **labels: str) -> StarModel:
     """The StarModel of a finished draft; the file name goes in front of any complaint."""
     try:
-        return StarModel(
-            **draft.columns, **draft.scalars, **labels, findings=tuple(draft.findings)
-        )
+        return StarModel(**draft.columns, **draft.scalars, **labels, findings=tuple(draft.findings))
     except InputError as error:
         raise type(error)(f"{draft.where}: {error}") from error

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from oscsolve.errors import InputError
-from oscsolve.star.formats import fgong, hdf5
+from oscsolve.star.formats import columns, fgong, hdf5
 from oscsolve.star.formats.files import checked_path, read_head
 from oscsolve.star.model import StarModel
 
@@ -36,6 +36,7 @@ class Format:
 FORMATS = (
     Format("hdf5", hdf5.recognise, hdf5.read, hdf5.write, (".h5", ".hdf5")),
     Format("fgong", fgong.recognise, fgong.read, fgong.write, (".fgong",)),
+    Format("columns", columns.recognise, columns.read),
 )
 
 
