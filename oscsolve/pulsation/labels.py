@@ -1,0 +1,75 @@
+"""Order labels: by counting nodes, and by counting eigenvalues.
+
+The count label follows the order of the spectrum and cannot slip; node counting is the habit of
+the trade and can fail for l >= 2 in condensed stars. Both are kept.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from oscsolve.pulsation.eigenfunction import NodalMode, Reconstruction
+
+
+def count_labels(negative: np.ndarray, cells: int, stages: int, dof: int, dipole: bool) -> np.ndarray:
+    """Radial orders from the number of negative eigenvalues just below each mode.
+
+    n = dof * cells * stages + 1 - negative: the part of the action that is the same for a
+    uniform medium is taken away, so that the f mode (or nothing, for l = 0) is zero. For l = 1
+    in full gravity the f mode is the translation of the star at sigma2 = 0, which is no
+    oscillation: orders below p1 shift by one.
+
+    Parameters
+    ----------
+    negative : (m,) int
+    cells, stages, dof : of the action
+    dipole : True for l = 1 in full gravity
+    """
+    order = dof * cells * stages + 1 - negative
+    return np.where(order <= 0, order - 1, order) if dipole else order
+
+
+def node_labels(
+    mode: NodalMode, rebuilt: Reconstruction, lam: float, degree: int, full_gravity: bool
+) -> tuple[int, int]:
+    """n_p and n_g: zeros of the radial displacement by the sense in which the mode turns there.
+
+    A zero is p-type where d(xi_r)/dr * xi_h < 0 (Scuflaire 1974, Osaki 1975). For l = 1 in full
+    gravity both displacements are taken relative to the mean displacement of the mass inside,
+    which gives the variables of Takata (2006) up to positive factors; p modes, n_p >= n_g, then
+    have one node less than their order. For l = 0 every zero is p-type and the fundamental has
+    order 1.
+    """
+    r = rebuilt.mesh.node[1:]
+    radial, horizontal = mode.q1[1:] / r**2, mode.xi_h[1:]
+    if degree == 0:
+        return _crossings(radial, np.ones_like(r))[0] + _crossings(radial, np.ones_like(r))[1] + 1, 0
+    if degree == 1 and full_gravity:
+        m = rebuilt.g[1:] * r**2
+        inner_mean = -(4.0 * np.pi * mode.p2[1:] * r + mode.q2[1:] * r**2) / (3.0 * m)
+        n_p, n_g = _crossings(radial - inner_mean, horizontal - inner_mean)
+        return (n_p + 1, n_g) if n_p >= n_g else (n_p, n_g)
+    return _crossings(radial, horizontal)
+
+
+def _crossings(radial: np.ndarray, horizontal: np.ndarray) -> tuple[int, int]:
+    """Number of zeros of `radial` where radial' * horizontal is negative, and positive."""
+    keep = radial != 0.0
+    a, b = radial[keep], horizontal[keep]
+    at = np.flatnonzero(np.signbit(a[1:]) != np.signbit(a[:-1]))
+    share = a[at] / (a[at] - a[at + 1])
+    there = b[at] + share * (b[at + 1] - b[at])
+    turning = (a[at + 1] - a[at]) * there
+    return int(np.sum(turning < 0.0)), int(np.sum(turning > 0.0))
+
+
+def kinds(degree: int, n_p: np.ndarray, n_g: np.ndarray, order: np.ndarray) -> np.ndarray:
+    """(m,) str, what each mode is: radial, mixed (n_p and n_g above zero), p, f or g.
+
+    For l = 1 in full gravity n_p holds the extra one of `node_labels`, which does not count
+    towards mixed character unless there is a g node too.
+    """
+    if degree == 0:
+        return np.full(order.size, "radial")
+    named = np.where(order > 0, "p", np.where(order < 0, "g", "f"))
+    return np.where((n_p > 0) & (n_g > 0), "mixed", named)
