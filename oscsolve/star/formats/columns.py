@@ -11,7 +11,6 @@ from pathlib import Path
 import numpy as np
 
 from oscsolve.errors import InputError
-from oscsolve.star.derive import derive_a_star
 from oscsolve.star.formats.column_names import COLUMNS, Spelling, match_names
 from oscsolve.star.formats.column_units import Units, choose_units, constant_in_cgs
 from oscsolve.star.formats.files import bytes_hash, read_bytes
@@ -22,6 +21,7 @@ from oscsolve.star.formats.points import (
     make_star,
     merge_repeated_radii,
     order_outward,
+    settle_a_star,
     settle_centre,
     settle_gravity,
 )
@@ -272,15 +272,4 @@ def _settle_buoyancy(draft: Draft, digits: float) -> None:
         return
     if "brunt_n2" in c:
         return
-    names = ("radius", "mass", "pressure", "density", "gamma1")
-    gravity = draft.scalars["gravitational_constant"]
-    c["a_star"], widened = derive_a_star(*(c[name] for name in names), gravity, digits)
-    wide = f"; {widened} points lie too close for the digits of the file and were fitted together"
-    draft.note(
-        "doubt" if widened else "note",
-        "a-star-derived",
-        "the file has no buoyancy; A* was derived from P, rho and Gamma1 by second-order "
-        f"differences of ln rho over ln P{wide if widened else ''}",
-        "export A* or N^2 if the code knows it better (composition gradients)",
-        size=float(widened),
-    )
+    settle_a_star(draft, digits, "no buoyancy")

@@ -15,7 +15,7 @@ from pathlib import Path
 import numpy as np
 
 from oscsolve.errors import InputError
-from oscsolve.star.formats.files import bytes_hash, read_bytes, replacing
+from oscsolve.star.formats.files import bytes_hash, read_bytes
 from oscsolve.star.formats.numbers import is_number, parse_number, rounding
 from oscsolve.star.formats.points import (
     GRAVITY_RANGE,
@@ -23,19 +23,19 @@ from oscsolve.star.formats.points import (
     make_star,
     merge_repeated_radii,
     order_outward,
+    settle_a_star,
     settle_centre,
     settle_gravity,
 )
 from oscsolve.star.model import StarModel
-from oscsolve.version import __version__
 
-_PER_LINE = 5
+PER_LINE = 5
 _TEXT_LINES = 4
 _FIRST_NUMBER_LINE = _TEXT_LINES + 2
 _COUNTS = re.compile(rb"^\s*(\d+)\s+(\d+)\s+(\d+)(?:\s+(-?\d+))?\s*$")
 
 #: Place (from 0) of the point variables used here.
-_VARIABLES = {
+VARIABLES = {
     "radius": 0,
     "ln_q": 1,
     "temperature": 2,
@@ -46,9 +46,8 @@ _VARIABLES = {
     "a_star": 14,
     "metals": 16,
 }
-#: ln(m/M) written for a centre; exp of it is far below any mass in a model.
-_LN_Q_CENTRE = -1e3
-_WRITE_VERSION = 300
+#: Median |A*| below which a star counts as neutrally stratified.
+_NEUTRAL = 1e-2
 _MIN_VARIABLES = 15
 _MIN_GLOBALS = 3
 
@@ -65,11 +64,11 @@ class _Layout:
 
     @property
     def global_lines(self) -> int:
-        return -(-self.globals_ // _PER_LINE)
+        return -(-self.globals_ // PER_LINE)
 
     @property
     def point_lines(self) -> int:
-        return -(-self.variables // _PER_LINE)
+        return -(-self.variables // PER_LINE)
 
     @property
     def lines(self) -> int:
@@ -77,13 +76,12 @@ class _Layout:
 
 
 def recognise(head: bytes) -> bool:
-    """True if the fifth line holds the counts of an FGONG file and a number line follows."""
-    lines = head.split(b"\n", _FIRST_NUMBER_LINE)
-    if len(lines) < _FIRST_NUMBER_LINE or b"\0" in head:
+    """True if the fifth line is nothing but the counts of an FGONG file."""
+    lines = head.split(b"\n", _TEXT_LINES + 1)
+    if len(lines) <= _TEXT_LINES or b"\0" in head:
         return False
     found = _COUNTS.match(lines[_TEXT_LINES])
-    first = lines[_TEXT_LINES + 1].strip()
-    return bool(found and 3 <= int(found[2]) <= 1000 and re.match(rb"[+-]?[\d.*]|nan|$", first))
+    return bool(found and int(found[2]) >= _MIN_GLOBALS and int(found[3]) >= 10)
 
 
 def read(path: Path, *, gravitational_constant: float | None = None) -> StarModel:
@@ -114,6 +112,7 @@ def read(path: Path, *, gravitational_constant: float | None = None) -> StarMode
     settle_centre(draft)
     merge_repeated_radii(draft, digits)
     settle_gravity(draft, gravitational_constant, _stated_gravity(scale))
+    _settle_empty_a_star(draft, digits)
     return make_star(draft, name=path.stem, source=where, source_hash=digest)
 
 
@@ -165,21 +164,21 @@ def _read_numbers(
     columns = {}
     if fields is None:
         table = _parse_uneven(body, layout, width, first, where)
-        for name, at in _VARIABLES.items():
+        for name, at in VARIABLES.items():
             if at < layout.variables:
                 columns[name] = table[:, at].copy()
     else:
-        for name, at in _VARIABLES.items():
+        for name, at in VARIABLES.items():
             if at < layout.variables:
                 columns[name] = _parse_column(fields, at, layout, first, where)
-    texts = [field.decode("latin-1") for field in _cut_line(head[0], _PER_LINE, width)]
+    texts = [field.decode("latin-1") for field in _cut_line(head[0], PER_LINE, width)]
     return scale, columns, rounding(texts)
 
 
 def _field_width(head: list[bytes], count: int, where: str) -> int:
     """Width of one field, from the first full line of numbers; 0 means blank-separated."""
     line = head[0].rstrip()
-    number = min(count, _PER_LINE)
+    number = min(count, PER_LINE)
     width, rest = divmod(len(line), number)
     tokens = line.split()
     if rest == 0 and width >= 8:
@@ -212,7 +211,7 @@ def _parse_lines(lines: list[bytes], count: int, width: int, first: int, where: 
     """`count` numbers from a few lines, one field at a time; names the line of a bad one."""
     values: list[float] = []
     for k, line in enumerate(lines):
-        number = min(_PER_LINE, count - len(values))
+        number = min(PER_LINE, count - len(values))
         text = line.rstrip()
         cut = _cut_line(text, number, width)
         try:
@@ -232,9 +231,9 @@ def _cut_fields(body: bytes, layout: _Layout, width: int) -> np.ndarray | None:
     """(points, variables, width) bytes if all lines have the exact width, else None."""
     if width == 0:
         return None
-    counts = [_PER_LINE] * (layout.variables // _PER_LINE)
-    if layout.variables % _PER_LINE:
-        counts.append(layout.variables % _PER_LINE)
+    counts = [PER_LINE] * (layout.variables // PER_LINE)
+    if layout.variables % PER_LINE:
+        counts.append(layout.variables % PER_LINE)
     length = layout.variables * width + len(counts)
     size = layout.points * length
     if len(body) == size - 1:
@@ -267,9 +266,9 @@ def _parse_column(
         try:
             values[k] = _number(field)
         except ValueError as error:
-            line = first + k * layout.point_lines + at // _PER_LINE
+            line = first + k * layout.point_lines + at // PER_LINE
             raise InputError(
-                f"{where}, line {line}: expected a number in field {at % _PER_LINE + 1}; got "
+                f"{where}, line {line}: expected a number in field {at % PER_LINE + 1}; got "
                 f"{field.decode('latin-1').strip()!r}. Repair the line or write the file again"
             ) from error
     return values
@@ -300,6 +299,12 @@ def _make_draft(scale: np.ndarray, columns: dict[str, np.ndarray], where: str) -
                 f"{where}, line {_FIRST_NUMBER_LINE}: the {name} of the star must be above zero; "
                 f"got {value:g}"
             )
+    outer = float(np.max(columns["radius"]))
+    if not 0.5 < outer / radius < 2.0:
+        raise InputError(
+            f"{where}, line {_FIRST_NUMBER_LINE}: the radius of the star is {radius:g} cm, but its "
+            f"points reach {outer:g} cm; repair one of them"
+        )
     columns["mass"] = total * np.exp(columns.pop("ln_q"))
     metals = columns.pop("metals", None)
     hydrogen = columns["hydrogen"]
@@ -348,76 +353,13 @@ def _note_trailing(data: bytes, layout: _Layout, draft: Draft) -> None:
         )
 
 
-def write(star: StarModel, path: Path, *, overwrite: bool = False) -> None:
-    """Write FGONG with 17 significant digits in fields of 26 characters, surface first.
-
-    Parameters
-    ----------
-    star : model to write. Variables that it does not have are zero in the file.
-    path : file to make.
-    overwrite : replace an existing file.
-
-    Notes
-    -----
-    The fields that are filled: globals 1 M, 2 R, 3 L, 15 G; variables 1 r, 2 ln(m/M), 3 T, 4 P,
-    5 rho, 6 X, 10 Gamma1, 15 A*, 17 Z, 18 R - r. FGONG stores ln(m/M), so the mass comes back
-    to a few units in the last digit, everything else exactly. FGONG has no place for the
-    rotation and the effective temperature; the HDF5 file keeps them.
-
-    Raises
-    ------
-    InputError
-        G is not the cgs value, so readers of FGONG would misread it, or the file exists and
-        `overwrite` is false, or cannot be written.
-    """
-    low, high = GRAVITY_RANGE
-    if not low < star.gravitational_constant < high:
-        raise InputError(
-            f"{path}: G = {star.gravitational_constant:g} is not in cgs units, which FGONG "
-            "takes for granted; write .h5 instead or rescale the model"
-        )
-    scale = np.zeros(15)
-    scale[:3] = star.total_mass, star.photospheric_radius, star.luminosity or 0.0
-    scale[14] = star.gravitational_constant
-    table = _write_table(star)
-    text = [
-        star.name[:79],
-        f"Written by oscsolve {__version__}; cgs units",
-        f"Source: {star.source}"[:79],
-        "Variables used: 1-6, 10, 15, 17, 18; the others are zero",
-        f"{star.radius.size:10d}{scale.size:10d}{table.shape[1]:10d}{_WRITE_VERSION:10d}",
-    ]
-    lines = [_plain(line) for line in text]
-    lines += _write_lines(scale)
-    for row in table[::-1]:
-        lines += _write_lines(row)
-    with replacing(path, overwrite) as temporary:
-        temporary.write_text("\n".join(lines) + "\n", encoding="ascii", newline="\n")
-
-
-def _write_table(star: StarModel) -> np.ndarray:
-    table = np.zeros((star.radius.size, 25))
-    table[:, 0] = star.radius
-    # A centre has m = 0 and no logarithm; the reader takes r = 0 as m = 0.
-    with np.errstate(divide="ignore"):
-        ln_q = np.log(star.mass / star.total_mass)
-    table[:, 1] = np.maximum(ln_q, _LN_Q_CENTRE)
-    optional = {"temperature": 2, "hydrogen": 5}
-    for name, at in {**_VARIABLES, **optional}.items():
-        values = getattr(star, name, None)
-        if values is not None:
-            table[:, at] = values
-    if star.hydrogen is not None and star.helium is not None:
-        table[:, _VARIABLES["metals"]] = 1.0 - star.hydrogen - star.helium
-    table[:, 17] = star.photospheric_radius - star.radius
-    return table
-
-
-def _write_lines(values: np.ndarray) -> list[str]:
-    fields = [f"{value:26.16E}" for value in values.tolist()]
-    return ["".join(fields[k : k + _PER_LINE]) for k in range(0, len(fields), _PER_LINE)]
-
-
-def _plain(text: str) -> str:
-    """Text on one line in ASCII: FGONG has no encoding."""
-    return text.encode("ascii", "replace").decode("ascii").replace("\n", " ")
+def _settle_empty_a_star(draft: Draft, digits: float) -> None:
+    """Derive A* if the file leaves it zero everywhere although the star is stratified."""
+    zeros = draft.columns["a_star"]
+    if np.any(zeros != 0.0):
+        return
+    kept = list(draft.findings)
+    settle_a_star(draft, digits, "A* = 0 everywhere, which its P, rho and Gamma1 contradict")
+    # A star of neutral stratification has A* = 0 in truth; differences only add noise to it.
+    if float(np.median(np.abs(draft.columns["a_star"]))) < _NEUTRAL:
+        draft.columns["a_star"], draft.findings = zeros, kept

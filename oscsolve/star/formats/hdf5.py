@@ -86,7 +86,7 @@ def read(path: Path, *, gravitational_constant: float | None = None) -> StarMode
         ) from error
     changes: dict[str, Any] = {"source": str(path), "source_hash": file_hash(path)}
     findings = list(star.findings)
-    if star.source:
+    if star.source and all(finding.code != "structure-origin" for finding in findings):
         findings.append(
             Finding(
                 "note",
@@ -196,10 +196,10 @@ def _exact_star(fields: dict[str, Any], **labels: Any) -> StarModel:
     if a_star is None or brunt_n2 is None:
         return StarModel(**fields, **labels)
     star = StarModel(**{**fields, "brunt_n2": None}, **labels)
-    if np.array_equal(star.brunt_n2, brunt_n2):
+    if np.array_equal(np.asarray(star.brunt_n2), brunt_n2):
         return star
     other = StarModel(**{**fields, "a_star": None}, **labels)
-    return other if np.array_equal(other.a_star, a_star) else star
+    return other if np.array_equal(np.asarray(other.a_star), a_star) else star
 
 
 def _array(group: h5py.Group, name: str, needed: bool, where: str) -> np.ndarray | None:

@@ -6,13 +6,15 @@ Every repair leaves a `Finding`: nothing is reordered, dropped or merged in sile
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 
 from oscsolve.errors import InputError
-from oscsolve.star.derive import estimate_gravity
+from oscsolve.star.derive import derive_a_star, estimate_gravity
 from oscsolve.star.findings import Finding
 from oscsolve.star.model import StarModel
+from oscsolve.units import NEWTON_G
 
 #: A first point below this fraction of R is a stand-in for the centre, not a point of the model.
 PLACEHOLDER_FRACTION = 1e-12
@@ -124,11 +126,18 @@ def _mass_at_centre(draft: Draft) -> bool:
 
 
 def _centre_is_physical(draft: Draft) -> bool:
-    for name in ("pressure", "density"):
-        first, second = draft.columns[name][:2]
-        if not (first > 0.0 and abs(first - second) <= PLACEHOLDER_AGREEMENT * second):
+    """True if P and rho of the first point continue those of the second to the centre."""
+    c = draft.columns
+    pressure, density = c["pressure"], c["density"]
+    if not (pressure[0] > 0.0 and density[0] > 0.0):
+        return False
+    # P rises by G m rho / 2r from r to the centre; a coarse but true model may go beyond 1 %.
+    rise = NEWTON_G * c["mass"][1] * density[1] / (2.0 * c["radius"][1] * pressure[1])
+    allowed = max(PLACEHOLDER_AGREEMENT, 2.0 * float(rise))
+    for column in (pressure, density):
+        if not abs(column[0] / column[1] - 1.0) <= allowed:
             return False
-    return bool(draft.columns["gamma1"][0] > 0.0) if "gamma1" in draft.columns else True
+    return "gamma1" not in c or bool(c["gamma1"][0] > 0.0)
 
 
 def merge_repeated_radii(draft: Draft, digits: float) -> None:
@@ -156,6 +165,8 @@ def merge_repeated_radii(draft: Draft, digits: float) -> None:
         if _is_density_jump(draft, first, last, digits):
             keep[first + 1 : last] = False
             jumps.append(first)
+            if last > first + 1:
+                dropped.append(first)
         else:
             keep[first + 1 : last + 1] = False
             dropped.append(first)
@@ -198,7 +209,7 @@ def _note_repeated(draft: Draft, keep: np.ndarray, jumps: list[int], dropped: li
             "note",
             "repeated-radii",
             f"{count} points repeat the radius of the one before (x = {places}); the "
-            "difference is rounding, and the first of each group was kept",
+            "difference is rounding, and they were dropped",
             "export the model with more digits",
             place=float(x[dropped[0]]),
             size=float(count),
@@ -285,7 +296,31 @@ def _settle_estimate(draft: Draft, implied: float, scatter: float) -> None:
 
 def make_star(draft: Draft, **labels: str) -> StarModel:
     """The StarModel of a finished draft; the file name goes in front of any complaint."""
+    fields: dict[str, Any] = {**draft.columns, **draft.scalars, **labels}
     try:
-        return StarModel(**draft.columns, **draft.scalars, **labels, findings=tuple(draft.findings))
+        return StarModel(**fields, findings=tuple(draft.findings))
     except InputError as error:
         raise type(error)(f"{draft.where}: {error}") from error
+
+
+def settle_a_star(draft: Draft, rounding: float, missing: str) -> None:
+    """Derive A* and say so; `missing` completes "the file has ..." in the finding."""
+    c = draft.columns
+    c["a_star"], widened = derive_a_star(
+        c["radius"],
+        c["mass"],
+        c["pressure"],
+        c["density"],
+        c["gamma1"],
+        draft.scalars["gravitational_constant"],
+        rounding,
+    )
+    wide = f"; {widened} points lie too close for the digits of the file and were fitted together"
+    draft.note(
+        "doubt" if widened else "note",
+        "a-star-derived",
+        f"the file has {missing}; A* was derived from P, rho and Gamma1 by second-order "
+        f"differences of ln rho over ln P{wide if widened else ''}",
+        "export A* or N^2 if the code knows it better (composition gradients)",
+        size=float(widened),
+    )

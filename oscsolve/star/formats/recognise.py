@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from oscsolve.errors import InputError
-from oscsolve.star.formats import columns, fgong, hdf5
+from oscsolve.star.formats import columns, fgong, fgong_write, hdf5
 from oscsolve.star.formats.files import checked_path, read_head
 from oscsolve.star.model import StarModel
 
@@ -35,7 +35,7 @@ class Format:
 
 FORMATS = (
     Format("hdf5", hdf5.recognise, hdf5.read, hdf5.write, (".h5", ".hdf5")),
-    Format("fgong", fgong.recognise, fgong.read, fgong.write, (".fgong",)),
+    Format("fgong", fgong.recognise, fgong.read, fgong_write.write, (".fgong",)),
     Format("columns", columns.recognise, columns.read),
 )
 
