@@ -199,6 +199,15 @@ def test_mass_above_total_is_doubted(tmp_path, polytrope_n1):
     assert found[0].size == pytest.approx(1e-3, rel=1e-3)
 
 
+def test_mass_far_above_total_is_refused(tmp_path, polytrope_n1):
+    def absurd(table):
+        table[-3, 1] = 900.0
+
+    write_fgong(tmp_path / "a", polytrope_n1(), gravity=NEWTON_G, edit=absurd)
+    with pytest.raises(InputError, match="ln.m/M., which is not above zero; it is 900 at point 3"):
+        read_model(tmp_path / "a")
+
+
 def test_lines_after_the_points_are_mentioned(tmp_path, polytrope_n1):
     write_fgong(tmp_path / "a", polytrope_n1(), gravity=NEWTON_G)
     with (tmp_path / "a").open("a") as stream:

@@ -145,6 +145,18 @@ def test_cut_hdf5_is_refused(tmp_path, star):
         read_model(tmp_path / "b.h5")
 
 
+@pytest.mark.parametrize("at", range(0, 12000, 500))
+def test_hdf5_with_a_wrong_byte_is_read_or_refused(tmp_path, star, at):
+    write_model(star, tmp_path / "a.h5")
+    data = bytearray((tmp_path / "a.h5").read_bytes())
+    data[at:at] = b"-"
+    (tmp_path / "b.h5").write_bytes(data)
+    try:
+        read_model(tmp_path / "b.h5")
+    except InputError as error:
+        assert "\n" not in str(error) and "b.h5" in str(error)
+
+
 def test_content_decides_not_the_name(tmp_path, star):
     write_model(star, tmp_path / "a.fgong", format="hdf5")
     write_model(star, tmp_path / "b.h5", format="fgong")

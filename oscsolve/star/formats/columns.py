@@ -155,7 +155,9 @@ def _read_columns(
         if spelling.log10:
             # An absolute rounding of the logarithm is a relative one of the quantity.
             digits[name] *= float(np.max(np.abs(values))) * np.log(10.0)
-            values = 10.0**values
+            # A damaged exponent becomes infinite here and is refused with its row below.
+            with np.errstate(over="ignore"):
+                values = 10.0**values
         columns[name] = values
     return columns, digits
 

@@ -305,6 +305,13 @@ def _make_draft(scale: np.ndarray, columns: dict[str, np.ndarray], where: str) -
             f"{where}, line {_FIRST_NUMBER_LINE}: the radius of the star is {radius:g} cm, but its "
             f"points reach {outer:g} cm; repair one of them"
         )
+    ln_q = columns["ln_q"]
+    above = np.flatnonzero(ln_q > 1.0)
+    if above.size:
+        raise InputError(
+            f"{where}: variable 2 must be ln(m/M), which is not above zero; it is "
+            f"{ln_q[above[0]]:g} at point {above[0] + 1} of the file. Repair or write it again"
+        )
     columns["mass"] = total * np.exp(columns.pop("ln_q"))
     metals = columns.pop("metals", None)
     hydrogen = columns["hydrogen"]

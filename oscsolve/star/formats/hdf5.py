@@ -78,7 +78,7 @@ def read(path: Path, *, gravitational_constant: float | None = None) -> StarMode
                     "give a model file or a mode list that carries its model"
                 )
             star = read_structure(file[GROUP])
-    except (OSError, RuntimeError) as error:
+    except (OSError, RuntimeError, KeyError) as error:
         if isinstance(error, InputError):
             raise
         raise InputError(
