@@ -152,6 +152,17 @@ def isolate(
     )
 
 
+def empty_solution(action: Action) -> Solution:
+    """A solution without modes, of the shapes that belong to an action."""
+    cells, stages = action.width.size, action.weight.size
+    return Solution(
+        np.empty(0),
+        np.empty(0, np.int64),
+        np.empty((0, (cells * stages + 1) * action.dof)),
+        np.empty((0, cells, stages)),
+    )
+
+
 def random_start(action: Action, modes: int) -> tuple[np.ndarray, np.ndarray]:
     """Vectors and swings of white noise in the metric of the kinetic energy, always the same."""
     generator = np.random.default_rng(20260101)
@@ -189,6 +200,8 @@ def polish(
         An iteration did not settle.
     """
     modes = brackets.low.size
+    if modes == 0:
+        return empty_solution(action)
     guess = 0.5 * (brackets.low + brackets.high) if guess is None else guess
     vector, swing = random_start(action, modes) if start is None else start
     work = Workspace(action)

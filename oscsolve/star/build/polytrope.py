@@ -19,11 +19,11 @@ from oscsolve.units import NEWTON_G, SOLAR_MASS, SOLAR_RADIUS
 _TERMS = 26
 _STEP = 0.22
 #: Points of the model in each Taylor step.
-_POINTS_PER_STEP = 16
+_POINTS_PER_STEP = 64
 #: The model's last point before its edge lies this far inside it, in fractional radius.
 _EDGE = 1e-9
 #: Outermost part that is graded geometrically towards the edge, and the ratio of the grading.
-_GRADED, _RATIO = 0.02, 0.8
+_GRADED, _RATIO = 0.02, 0.87
 
 
 def polytrope(
