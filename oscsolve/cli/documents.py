@@ -1,0 +1,90 @@
+"""The mode list for other programs: one JSON document, or a CSV table."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+import math
+from collections.abc import Iterator
+from dataclasses import asdict
+
+import numpy as np
+
+from oscsolve.cli.table import star_lines, verdict_sentence
+from oscsolve.pulsation.modeset import ModeSet
+
+#: Column: unit.
+COLUMNS = {
+    "degree": "1",
+    "order": "1",
+    "n_p": "1",
+    "n_g": "1",
+    "kind": "1",
+    "nu": "uHz",
+    "nu_error": "uHz",
+    "sigma2": "1",
+    "period": "s",
+    "inertia": "1",
+}
+_CENSUS = ("degree", "low", "high", "counted", "listed", "relabelled")
+_STAR = {
+    "name": "",
+    "source": "",
+    "source_hash": "",
+    "total_mass": "g",
+    "photospheric_radius": "cm",
+    "gravitational_constant": "cm3 g-1 s-2",
+    "nu_dynamical": "uHz",
+}
+
+
+def json_document(modes: ModeSet) -> str:
+    """The list as one JSON document; what is not finite or not known is null."""
+    census = modes.census
+    document = {
+        "program": f"oscsolve {modes.program_version}",
+        "complete": modes.complete,
+        "star": {name: getattr(modes.star, name) for name in _STAR},
+        "options": dict(modes.options),
+        "units": {"modes": COLUMNS, "census": {"low": "uHz", "high": "uHz"}, "star": _STAR},
+        "census": _rows({name: getattr(census, name) for name in _CENSUS}),
+        "modes": _rows(
+            {name: getattr(modes, name) for name in (*COLUMNS, "relabelled")},
+        ),
+        "findings": [asdict(found) for found in (*modes.star.findings, *modes.findings)],
+    }
+    return json.dumps(_plain(document), allow_nan=False, ensure_ascii=False, indent=1)
+
+
+def csv_lines(modes: ModeSet) -> Iterator[str]:
+    """The list as CSV: comments behind ``#``, a line of names, one line a mode, all digits."""
+    yield f"# oscsolve {modes.program_version}: oscillation modes"
+    yield from star_lines(modes.star)
+    for name, value in modes.options.items():
+        yield f"# option {name} = {value}"
+    yield f"# {verdict_sentence(modes)}"
+    yield "# nu and nu_error in uHz, period in s"
+    yield ",".join(COLUMNS)
+    for row in _rows({name: getattr(modes, name) for name in COLUMNS}):
+        line = io.StringIO()
+        csv.writer(line, lineterminator="").writerow(row.values())
+        yield line.getvalue()
+
+
+def _rows(columns: dict[str, np.ndarray]) -> list[dict[str, object]]:
+    lists = [column.tolist() for column in columns.values()]
+    return [dict(zip(columns, row, strict=True)) for row in zip(*lists, strict=True)]
+
+
+def _plain(value: object) -> object:
+    """`value` without numpy types and without numbers that JSON cannot hold."""
+    if isinstance(value, dict):
+        return {str(name): _plain(item) for name, item in value.items()}
+    if isinstance(value, list | tuple):
+        return [_plain(item) for item in value]
+    if isinstance(value, np.generic | np.ndarray):
+        return _plain(value.tolist())
+    if isinstance(value, float) and not math.isfinite(value):
+        return None
+    return value

@@ -1,0 +1,113 @@
+"""``oscsolve modes``: the mode list of one star."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import Any
+
+import click
+
+import oscsolve
+from oscsolve.cli.documents import csv_lines, json_document
+from oscsolve.cli.options import (
+    Band,
+    gravitational_constant_option,
+    overwrite_option,
+    solve_options,
+)
+from oscsolve.cli.outputs import check_output, write_text
+from oscsolve.cli.progress import Progress, show_findings
+from oscsolve.cli.table import mode_table
+
+
+@click.command("modes")
+@click.argument("model", type=click.Path(path_type=Path))
+@solve_options
+@gravitational_constant_option
+@click.option(
+    "--out",
+    type=click.Path(path_type=Path),
+    metavar="FILE.h5",
+    help="Save modes, eigenfunctions and model as HDF5.",
+)
+@click.option(
+    "--csv",
+    "csv_path",
+    type=click.Path(path_type=Path, allow_dash=True),
+    metavar="FILE",
+    help="Write the list as CSV; - writes it to standard output in place of the table.",
+)
+@click.option(
+    "--json", "as_json", is_flag=True, help="Print one JSON document in place of the table."
+)
+@overwrite_option
+def command(
+    model: Path,
+    out: Path | None,
+    csv_path: Path | None,
+    as_json: bool,
+    overwrite: bool,
+    **asked: Any,
+) -> int:
+    """List the modes of the star in MODEL (FGONG, column table or HDF5).
+
+    The table ends with a census: for each degree the number of modes in the band, counted by
+    Sylvester's law of inertia, beside the number listed. Exit status 1 where the two differ.
+
+    In the table every line that does not begin with # is one mode: l, n, kind, n_p, n_g, nu and its
+    error in uHz, period, inertia.
+    """
+    to_stdout = csv_path == Path("-")
+    if to_stdout and as_json:
+        raise click.UsageError("--json and --csv - both want standard output; give --csv a file")
+    _check_outputs(model, out, None if to_stdout else csv_path, overwrite)
+    modes = _solve(model, keep_eigenfunctions=out is not None, **asked)
+    # Files first: whoever reads standard output may stop reading.
+    if out is not None:
+        oscsolve.save_modes(modes, out, overwrite=overwrite)
+    if csv_path is not None and not to_stdout:
+        write_text(csv_path, csv_lines(modes), overwrite=overwrite)
+    if as_json:
+        click.echo(json_document(modes))
+    else:
+        for line in csv_lines(modes) if to_stdout else mode_table(modes):
+            click.echo(line)
+    return 0 if modes.complete else 1
+
+
+def _check_outputs(model: Path, out: Path | None, csv_path: Path | None, overwrite: bool) -> None:
+    if out is not None:
+        check_output(out, overwrite=overwrite, suffixes=(".h5", ".hdf5"), inputs=[model])
+    if csv_path is not None:
+        check_output(csv_path, overwrite=overwrite, inputs=[model])
+    if out is not None and csv_path is not None and out.absolute() == csv_path.absolute():
+        raise click.UsageError(f"--out and --csv both name {out}; give them two names")
+
+
+def _solve(
+    model: Path,
+    *,
+    degrees: tuple[int, ...],
+    band: Band | None,
+    cowling: bool,
+    surface: str,
+    tolerance: float,
+    gravitational_constant: float | None,
+    keep_eigenfunctions: bool,
+) -> oscsolve.ModeSet:
+    star = oscsolve.read_model(model, gravitational_constant=gravitational_constant)
+    show_findings(star.findings)
+    with Progress() as progress:
+        modes = oscsolve.solve_modes(
+            star,
+            degrees,
+            None if band is None else (band.first, band.second),
+            unit="uHz" if band is None else band.unit,
+            gravity="cowling" if cowling else "full",
+            surface=surface,
+            tolerance=tolerance,
+            options=oscsolve.SolveOptions(eigenfunctions=keep_eigenfunctions),
+            progress=progress,
+        )
+    show_findings(modes.findings)
+    return modes
