@@ -6,13 +6,15 @@ import csv
 import io
 import json
 import math
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from dataclasses import asdict
+from pathlib import Path
 
 import numpy as np
 
 from oscsolve.cli.table import star_lines, verdict_sentence
 from oscsolve.pulsation.modeset import ModeSet
+from oscsolve.star.formats.files import replacing
 
 #: Column: unit.
 COLUMNS = {
@@ -70,6 +72,15 @@ def csv_lines(modes: ModeSet) -> Iterator[str]:
         line = io.StringIO()
         csv.writer(line, lineterminator="").writerow(row.values())
         yield line.getvalue()
+
+
+def write_text(path: Path, lines: Iterable[str], *, overwrite: bool) -> None:
+    """Write lines to a file that appears complete or not at all."""
+    with (
+        replacing(path, overwrite) as temporary,
+        temporary.open("w", encoding="utf-8", newline="\n", errors="backslashreplace") as stream,
+    ):
+        stream.writelines(f"{line}\n" for line in lines)
 
 
 def _rows(columns: dict[str, np.ndarray]) -> list[dict[str, object]]:

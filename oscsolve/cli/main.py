@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import importlib
 import io
 import os
@@ -70,8 +71,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
         status = _run(list(sys.argv[1:] if arguments is None else arguments))
         sys.stdout.flush()
     except BrokenPipeError:
-        # The reader (head, less) has seen enough; keep the interpreter from flushing again.
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        # The reader (head, less) has seen enough.
+        _abandon_output()
         return _EXIT_PIPE
     except KeyboardInterrupt:
         return _complain("interrupted", _EXIT_INTERRUPTED)
@@ -84,8 +85,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except OscsolveError as error:
         return _complain(str(error), _EXIT_USAGE)
     except OSError as error:
-        # Readers and writers word their own errors; what is left is standard output itself.
-        return _complain(f"standard output cannot be written: {error.strerror}", _EXIT_USAGE)
+        # Readers and writers word their own errors; what is left is mostly standard output itself.
+        _abandon_output()
+        where = error.filename or "standard output"
+        return _complain(f"{where}: {error.strerror or error}; check the disk", _EXIT_USAGE)
     return status
 
 
@@ -97,6 +100,12 @@ def _run(arguments: list[str]) -> int:
     except click.exceptions.Exit as end:
         return end.exit_code
     return result if isinstance(result, int) else 0
+
+
+def _abandon_output() -> None:
+    """Keep the interpreter from flushing standard output, and failing, once more at its end."""
+    with contextlib.suppress(OSError, ValueError):
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 
 def _usage(error: click.UsageError) -> str:

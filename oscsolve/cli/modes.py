@@ -8,16 +8,14 @@ from typing import Any
 import click
 
 import oscsolve
-from oscsolve.cli.documents import csv_lines, json_document
 from oscsolve.cli.options import (
     Band,
     gravitational_constant_option,
     overwrite_option,
     solve_options,
 )
-from oscsolve.cli.outputs import check_output, write_text
+from oscsolve.cli.outputs import check_output
 from oscsolve.cli.progress import Progress, show_findings
-from oscsolve.cli.table import mode_table
 
 
 @click.command("modes")
@@ -61,6 +59,10 @@ def command(
     if to_stdout and as_json:
         raise click.UsageError("--json and --csv - both want standard output; give --csv a file")
     _check_outputs(model, out, None if to_stdout else csv_path, overwrite)
+    # Loaded here so that --help does not wait for numpy and h5py.
+    from oscsolve.cli.documents import csv_lines, json_document, write_text
+    from oscsolve.cli.table import mode_table
+
     modes = _solve(model, keep_eigenfunctions=out is not None, **asked)
     # Files first: whoever reads standard output may stop reading.
     if out is not None:
@@ -96,8 +98,7 @@ def _solve(
     keep_eigenfunctions: bool,
 ) -> oscsolve.ModeSet:
     star = oscsolve.read_model(model, gravitational_constant=gravitational_constant)
-    show_findings(star.findings)
-    with Progress() as progress:
+    with Progress(announce=lambda: show_findings(star.findings)) as progress:
         modes = oscsolve.solve_modes(
             star,
             degrees,

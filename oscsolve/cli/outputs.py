@@ -7,7 +7,6 @@ from collections.abc import Iterable
 from pathlib import Path
 
 from oscsolve.errors import InputError
-from oscsolve.star.formats.files import replacing
 
 
 def check_output(
@@ -44,12 +43,3 @@ def check_output(
             raise InputError(f"{path}: the file exists; choose another name or give --overwrite")
     if not os.access(folder, os.W_OK):
         raise InputError(f"{path}: the folder {folder} cannot be written; choose another one")
-
-
-def write_text(path: Path, lines: Iterable[str], *, overwrite: bool) -> None:
-    """Write lines to a file that appears complete or not at all."""
-    with (
-        replacing(path, overwrite) as temporary,
-        temporary.open("w", encoding="utf-8", newline="\n", errors="backslashreplace") as stream,
-    ):
-        stream.writelines(f"{line}\n" for line in lines)

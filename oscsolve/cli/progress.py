@@ -6,7 +6,7 @@ import os
 import sys
 import threading
 import time
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from pathlib import Path
 from typing import TYPE_CHECKING, TextIO
 
@@ -25,15 +25,20 @@ class Progress:
     On a terminal one line is rewritten in place and cleared at the end; elsewhere plain lines
     follow at long intervals. A thread of its own keeps time, for the solver may be busy for long
     between two calls. Use as a context manager.
+
+    The first call comes when the solver has found its arguments good: only then `announce` is
+    called, so that a refused run leaves one line and no more.
     """
 
     def __init__(
         self,
+        announce: Callable[[], None],
         stream: TextIO | None = None,
         *,
         silence: float = _SILENCE,
         interval: float = _INTERVAL,
     ) -> None:
+        self._announce = announce
         self._stream = sys.stderr if stream is None else stream
         self._terminal = self._stream.isatty()
         self._silence = silence
@@ -45,8 +50,6 @@ class Progress:
         self._clock = threading.Thread(target=self._keep_time, daemon=True)
 
     def __enter__(self) -> Progress:
-        if compile_is_due():
-            self._say("compiling the solver for the first run; later runs start at once")
         self._clock.start()
         return self
 
@@ -58,6 +61,10 @@ class Progress:
             self._stream.flush()
 
     def __call__(self, done: int, total: int, what: str) -> None:
+        if self._state is None:
+            self._announce()
+            if compile_is_due():
+                self._say("compiling the solver for the first run; later runs start at once")
         self._state = (done, total, what)
 
     def _keep_time(self) -> None:

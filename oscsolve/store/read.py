@@ -110,8 +110,8 @@ def read_findings(opened: h5py.File, path: Path) -> tuple[Finding, ...]:
     columns = read_columns(opened, path, "findings", schema.FINDINGS)
     try:
         return tuple(
-            Finding(*map(str, texts), place=_known(place), size=_known(size))
-            for *texts, place, size in zip(*columns.values(), strict=True)
+            Finding(severity, code, message, advice, _known(place), _known(size))
+            for severity, code, message, advice, place, size in zip(*columns.values(), strict=True)
         )
     except ValueError as error:
         raise InputError(f"{path}: /findings does not fit together: {error}") from error
@@ -126,7 +126,7 @@ def read_options(opened: h5py.File) -> dict[str, object]:
     return {
         name.removeprefix(schema.OPTION): _plain(value)
         for name, value in opened.attrs.items()
-        if name.startswith(schema.OPTION)
+        if str(name).startswith(schema.OPTION)  # a damaged name comes as bytes
     }
 
 
