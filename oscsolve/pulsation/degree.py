@@ -172,7 +172,7 @@ def _error_estimate(ladder: list[_Order]) -> np.ndarray:
     With d1 and d2 the changes from the first to the second and the second to the third order,
     errors fall about geometrically and d2 * (d2/d1) estimates what is left; the ratio is
     enlarged by 6 and kept between 0.05 and 1. Modes that a lower order does not hold get the
-    change they do have. Round-off is added.
+    change they do have. Round-off is added: a floor, or what the last polishing step shows.
     """
     top = ladder[2]
     lam = top.solution.lam
@@ -185,7 +185,8 @@ def _error_estimate(ladder: list[_Order]) -> np.ndarray:
     unknown = np.isnan(d2)
     worst = np.nanmax(d2 / np.abs(lam)) if not np.all(unknown) else np.inf
     d2 = np.where(unknown, worst * np.abs(lam), d2)
-    return d2 * np.where(unknown, 1.0, ratio) + ROUND_OFF * np.abs(lam)
+    noise = np.maximum(ROUND_OFF, 2.0 * top.solution.noise)
+    return d2 * np.where(unknown, 1.0, ratio) + noise * np.abs(lam)
 
 
 def _change(lower: _Order, upper: _Order) -> np.ndarray:

@@ -14,8 +14,10 @@ from oscsolve.pulsation.mesh import Element, Mesh, lagrange_basis
 from oscsolve.pulsation.sweep import Action, count_negative
 from oscsolve.star.profile import Profile
 
-#: Polishing stops when the Rayleigh quotient moves by less than this, relative.
+#: Polishing stops when the Rayleigh quotient moves by less than this, relative, or when it moves
+#: by less than the second number and no longer falls: then round-off is what is left.
 _SETTLED = 3e-14
+_STALLED = 1e-10
 _MOST_STEPS = 60
 #: Relative width of a bracket that cannot be split any further.
 _NARROWEST = 4e-15
@@ -46,16 +48,19 @@ class Solution:
     negative : (m,) int, negative eigenvalues of the action just below each
     vector : (m, nodes * dof) nodal q
     swing : (m, cells, s) y = rho r xi_h at the Gauss points
+    noise : (m,) relative size of the last change of lam, a measure of round-off
     """
 
     lam: np.ndarray
     negative: np.ndarray
     vector: np.ndarray
     swing: np.ndarray
+    noise: np.ndarray
 
     def select(self, keep: np.ndarray) -> Solution:
         """The solution restricted to some of its modes."""
-        return Solution(self.lam[keep], self.negative[keep], self.vector[keep], self.swing[keep])
+        columns = (self.lam, self.negative, self.vector, self.swing, self.noise)
+        return Solution(*(column[keep] for column in columns))
 
 
 def count_at(action: Action, lam: np.ndarray) -> np.ndarray:
@@ -160,6 +165,7 @@ def empty_solution(action: Action) -> Solution:
         np.empty(0, np.int64),
         np.empty((0, (cells * stages + 1) * action.dof)),
         np.empty((0, cells, stages)),
+        np.empty(0),
     )
 
 
@@ -205,15 +211,22 @@ def polish(
     guess = 0.5 * (brackets.low + brackets.high) if guess is None else guess
     vector, swing = random_start(action, modes) if start is None else start
     work = Workspace(action)
-    out = Solution(np.empty(modes), brackets.negative, np.empty_like(vector), np.empty_like(swing))
+    out = Solution(
+        lam=np.empty(modes),
+        negative=brackets.negative,
+        vector=np.empty_like(vector),
+        swing=np.empty_like(swing),
+        noise=np.empty(modes),
+    )
     for first in range(0, modes, LANES):
         lanes = np.minimum(np.arange(first, first + LANES), modes - 1)
         work.vector[:] = vector[lanes].T
         work.swing[:] = np.moveaxis(swing[lanes], 0, -1)
-        lam = _iterate(action, work, brackets, lanes, guess[lanes])
+        lam, noise = _iterate(action, work, brackets, lanes, guess[lanes])
         kept = slice(first, min(first + LANES, modes))
         size = kept.stop - first
         out.lam[kept] = lam[:size]
+        out.noise[kept] = noise[:size]
         out.vector[kept] = work.vector.T[:size]
         out.swing[kept] = np.moveaxis(work.swing, -1, 0)[:size]
     return out
@@ -221,26 +234,33 @@ def polish(
 
 def _iterate(
     action: Action, work: Workspace, brackets: Brackets, lanes: np.ndarray, guess: np.ndarray
-) -> np.ndarray:
-    """Rayleigh quotient iteration in all lanes, fenced by brackets that the counts tighten."""
+) -> tuple[np.ndarray, np.ndarray]:
+    """Rayleigh quotient iteration in all lanes, fenced by brackets that the counts tighten.
+
+    Returns the eigenvalues and the relative size of the last step.
+    """
     low, high = brackets.low[lanes].copy(), brackets.high[lanes].copy()
     lam = np.array(guess)
+    last = np.full(LANES, np.inf)
+    settled = np.zeros(LANES, bool)
     for _ in range(_MOST_STEPS):
         work.iterate(action, lam)
-        below = work.negative >= brackets.negative[lanes]
-        low, high = (
-            np.where(below, np.maximum(low, lam), low),
-            np.where(below, high, np.minimum(high, lam)),
-        )
-        new = lam + work.step
         scale = np.maximum(np.abs(lam), 1e-300)
-        settled = np.abs(work.step) <= _SETTLED * scale
-        slack = 10.0 * _SETTLED * scale
+        step = np.abs(work.step) / scale
+        new = lam + work.step
+        slack = scale * np.maximum(10.0 * _SETTLED, 3.0 * np.where(step < _STALLED, step, 0.0))
         outside = (new < low - slack) | (new > high + slack) | ~np.isfinite(new)
-        if np.all(settled & ~outside):
-            return new
-        lam = np.where(outside, 0.5 * (low + high), new)
-    worst = lanes[np.argmax(np.where(outside, np.inf, np.abs(work.step / scale)))]
+        stalled = (step < _STALLED) & (step > 0.1 * last)
+        done = ~settled & ~outside & ((step <= _SETTLED) | stalled)
+        lam, last = np.where(done, new, lam), np.where(settled, last, step)
+        settled |= done
+        if np.all(settled):
+            return lam, last
+        below = work.negative >= brackets.negative[lanes]
+        low = np.where(below & ~settled, np.maximum(low, lam), low)
+        high = np.where(below | settled, high, np.minimum(high, lam))
+        lam = np.where(settled, lam, np.where(outside, 0.5 * (low + high), new))
+    worst = lanes[int(np.argmin(settled))]
     raise IncompleteError(
         f"the mode between sigma2 = {brackets.low[worst]:.10g} and {brackets.high[worst]:.10g} "
         "did not settle"
