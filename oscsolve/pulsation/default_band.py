@@ -33,7 +33,9 @@ def choose_band(star: StarModel, profile: Profile) -> tuple[tuple[float, float],
     else:
         limits = _asymptotic_band(star)
         why = f"about {_ORDERS} orders of l = 1 g modes and of p modes"
-    low, high = (float(np.format_float_positional(v, precision=3, fractional=False)) for v in limits)
+    low, high = (
+        float(np.format_float_positional(v, precision=3, fractional=False)) for v in limits
+    )
     finding = Finding(
         "note", "band-chosen", f"no band was given; {low:g} to {high:g} uHz was chosen ({why})"
     )

@@ -91,9 +91,7 @@ class _Order:
 def solve_degree(profile: Profile, problem: Problem, options: SolveOptions) -> DegreeSolution:
     """Find, certify and refine all modes of one degree in the band."""
     low, high = _search_band(problem)
-    mesh = band_mesh(
-        profile, problem.degree, (low, high), options.phase_limit(problem.tolerance)
-    )
+    mesh = band_mesh(profile, problem.degree, (low, high), options.phase_limit(problem.tolerance))
     mesh = mesh.split(np.full(mesh.size, options.cells_factor))
     previous: _Order | None = None
     for rounds in range(_MOST_ROUNDS + 1):

@@ -27,6 +27,10 @@ from oscsolve.pulsation.compiled import LANES, compiled
 from oscsolve.pulsation.sweep import Action, _assemble, _join
 
 
+#: Spacing of double precision numbers around 1.
+EPSILON = float(np.finfo(np.float64).eps)
+
+
 class Workspace:
     """Arrays of one inverse iteration, reused between steps.
 
@@ -38,6 +42,7 @@ class Workspace:
     negative : (LANES,) int64, eigenvalues of the action below zero at lam
     step : (LANES,) -S/T, what to add to lam
     energy : (LANES,) 2 T of the vector before it was scaled to T = 1/2
+    noise : (LANES,) round-off of lam to expect from the size of the terms of S
     """
 
     def __init__(self, action: Action) -> None:
@@ -49,9 +54,10 @@ class Workspace:
         self.negative = np.zeros(LANES, np.int64)
         self.step = np.empty(LANES)
         self.energy = np.empty(LANES)
+        self.noise = np.empty(LANES)
 
     def iterate(self, action: Action, lam: np.ndarray) -> None:
-        """Replace `vector` by the next iterate at `lam`, and fill negative, step and energy."""
+        """Replace `vector` by the next iterate at `lam`, and fill negative, step, energy and noise."""
         inverse_step(
             action,
             lam,
@@ -61,11 +67,12 @@ class Workspace:
             self.negative,
             self.step,
             self.energy,
+            self.noise,
         )
 
 
 @compiled
-def inverse_step(action, lam, vector, swing, rows, negative, step, energy):
+def inverse_step(action, lam, vector, swing, rows, negative, step, energy, noise):
     """One step of inverse iteration in every lane; arguments as in `Workspace`."""
     mu = np.empty(LANES)
     for j in range(LANES):
@@ -73,31 +80,35 @@ def inverse_step(action, lam, vector, swing, rows, negative, step, energy):
         mu[j] = 1.0 / lam[j] if action.ll > 0.0 else 0.0
     _eliminate(action, lam, mu, vector, swing, rows, negative)
     _substitute(action, vector, rows)
-    _quotient(action, lam, mu, vector, swing, step, energy)
+    _quotient(action, lam, mu, vector, swing, step, energy, noise)
 
 
 @compiled
-def _point_values(action, cell, k, vector, j):
-    """q1, h (q1' - c11 q1) and z at Gauss point k, and q2, h (q2' - c21 q1)."""
+def _point_values(action, cell, k, vector, q1, e, q2, f):
+    """q1, h (q1' - c11 q1), q2 and h (q2' - c21 q1) at Gauss point k of a cell, all lanes."""
     dof, stages = action.dof, action.value.shape[0]
-    point = action.point[cell, k]
     base = cell * stages * dof
     end = base + stages * dof
-    right1, right2 = vector[end, j], vector[end + dof - 1, j]
-    q1, q2, s1, s2 = right1, right2, 0.0, 0.0
+    for j in range(LANES):
+        q1[j], e[j] = vector[end, j], 0.0
+        q2[j], f[j] = vector[end + dof - 1, j], 0.0
     for i in range(stages):
         node = base + dof * (i + 1) if i < stages - 1 else base
         v, s = action.value[k, i], action.slope[k, i]
-        difference = vector[node, j] - right1
-        q1 += v * difference
-        s1 += s * difference
+        for j in range(LANES):
+            difference = vector[node, j] - vector[end, j]
+            q1[j] += v * difference
+            e[j] += s * difference
         if dof == 2:
-            difference = vector[node + 1, j] - right2
-            q2 += v * difference
-            s2 += s * difference
+            for j in range(LANES):
+                difference = vector[node + 1, j] - vector[end + 1, j]
+                q2[j] += v * difference
+                f[j] += s * difference
     h = action.width[cell]
-    z = point[2] * q1 + point[3] * q2
-    return q1, s1 - h * point[5] * q1, z, q2, s2 - h * point[6] * q1
+    c11, c21 = h * action.point[cell, k, 5], h * action.point[cell, k, 6]
+    for j in range(LANES):
+        e[j] -= c11 * q1[j]
+        f[j] -= c21 * q1[j]
 
 
 @compiled
@@ -105,23 +116,27 @@ def _energy_gradient(action, cell, mu, vector, swing, right_side):
     """Derivative of T by the nodal q of one cell, that by y eliminated."""
     dof, stages = action.dof, action.value.shape[0]
     h = action.width[cell]
+    q1, e, q2, f = np.empty(LANES), np.empty(LANES), np.empty(LANES), np.empty(LANES)
+    inertia, push = np.empty(LANES), np.empty(LANES)
     right_side[:] = 0.0
     for k in range(stages):
         b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = action.point[cell, k]
+        w = action.weight[k]
+        _point_values(action, cell, k, vector, q1, e, q2, f)
         for j in range(LANES):
-            q1, e, z, q2, f = _point_values(action, cell, k, vector, j)
             b11 = b0 + b1 * mu[j]
             if b11 == 0.0:
                 b11 = -1e-300
-            inertia = -action.weight[k] * h * d1 * q1
-            push = action.weight[k] * b1 * mu[j] * swing[cell, k, j] / b11
-            for i in range(stages + 1):
-                v = action.value[k, i]
-                right_side[dof * i, j] += inertia * v + push * (
-                    action.slope[k, i] + h * (b0 * s1 - c11) * v
-                )
-                if dof == 2:
-                    right_side[2 * i + 1, j] += push * h * b0 * s2 * v
+            inertia[j] = -w * h * d1 * q1[j]
+            push[j] = w * b1 * mu[j] * swing[cell, k, j] / b11
+        for i in range(stages + 1):
+            v = action.value[k, i]
+            along = action.slope[k, i] + h * (b0 * s1 - c11) * v
+            for j in range(LANES):
+                right_side[dof * i, j] += inertia[j] * v + push[j] * along
+            if dof == 2:
+                for j in range(LANES):
+                    right_side[2 * i + 1, j] += push[j] * h * b0 * s2 * v
 
 
 @compiled
@@ -224,13 +239,14 @@ def _substitute(action, vector, rows):
 
 
 @compiled
-def _quotient(action, lam, mu, vector, swing, step, energy):
-    """S and T of the vector, summed from positive and negative squares; scales it to T = 1/2."""
+def _quotient(action, lam, mu, vector, swing, step, energy, noise):
+    """S and T of the vector, term by term; scales it to T = 1/2 and estimates round-off."""
     dof = action.dof
     stages = action.value.shape[0]
     cells = action.width.size
     base = cells * stages * dof
-    total = np.zeros(LANES)
+    total, size = np.zeros(LANES), np.zeros(LANES)
+    q1, e, q2, f = np.empty(LANES), np.empty(LANES), np.empty(LANES), np.empty(LANES)
     for j in range(LANES):
         energy[j] = 0.0
     for cell in range(cells):
@@ -241,35 +257,40 @@ def _quotient(action, lam, mu, vector, swing, step, energy):
         for k in range(stages):
             b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = action.point[cell, k]
             w = action.weight[k] * h
+            _point_values(action, cell, k, vector, q1, e, q2, f)
             for j in range(LANES):
-                q1, e, z, q2, f = _point_values(action, cell, k, vector, j)
-                e, f = e / h, f / h
+                z = s1 * q1[j] + (s2 * q2[j] if dof == 2 else 0.0)
                 b11 = b0 + b1 * mu[j]
                 if b11 == 0.0:
                     b11 = -1e-300
                 y0 = swing[cell, k, j]
-                y = mu[j] * (e + b0 * (z + y0)) / b11
-                p1 = lam[j] * y - z - y0 if action.ll > 0.0 else e / b0
-                potential = b0 * p1 * p1 - 2.0 * b1 * y * z - d0 * q1 * q1
+                y = mu[j] * (e[j] / h + b0 * (z + y0)) / b11
+                p1 = lam[j] * y - z - y0 if action.ll > 0.0 else e[j] / (h * b0)
+                squeeze, shear = b0 * p1 * p1, 2.0 * b1 * y * z
+                lift, field = d0 * q1[j] * q1[j], 0.0
                 if dof == 2:
-                    potential += f * f / b22 - d2 * q2 * q2
-                kinetic = b1 * y * y - d1 * q1 * q1
-                total[j] += w * (potential + lam[j] * kinetic)
+                    field = f[j] * f[j] / (h * h * b22) - d2 * q2[j] * q2[j]
+                kinetic = b1 * y * y - d1 * q1[j] * q1[j]
+                total[j] += w * (squeeze - shear - lift + field + lam[j] * kinetic)
+                size[j] += w * (abs(squeeze) + abs(shear) + abs(lift) + abs(field))
                 energy[j] += w * kinetic
                 swing[cell, k, j] = y
+    scale = np.empty(LANES)
     for j in range(LANES):
         k11, k12, k22, t11, t12, t22, _ = surface_term(action.top, lam[j], mu[j])
-        q1 = vector[base, j]
-        total[j] += k11 * q1 * q1
-        energy[j] += t11 * q1 * q1
+        a, b = vector[base, j], vector[base + dof - 1, j]
+        total[j] += k11 * a * a
+        energy[j] += t11 * a * a
         if dof == 2:
-            q2 = vector[base + 1, j]
-            total[j] += 2.0 * k12 * q1 * q2 + k22 * q2 * q2
-            energy[j] += 2.0 * t12 * q1 * q2 + t22 * q2 * q2
+            total[j] += 2.0 * k12 * a * b + k22 * b * b
+            energy[j] += 2.0 * t12 * a * b + t22 * b * b
         step[j] = -total[j] / energy[j]
-        scale = 1.0 / np.sqrt(abs(energy[j]))
-        for i in range(base + dof):
-            vector[i, j] *= scale
-        for cell in range(cells):
-            for k in range(stages):
-                swing[cell, k, j] *= scale
+        noise[j] = EPSILON * (abs(lam[j]) + size[j] / abs(energy[j]))
+        scale[j] = 1.0 / np.sqrt(abs(energy[j]))
+    for i in range(base + dof):
+        for j in range(LANES):
+            vector[i, j] *= scale[j]
+    for cell in range(cells):
+        for k in range(stages):
+            for j in range(LANES):
+                swing[cell, k, j] *= scale[j]

@@ -11,7 +11,9 @@ import numpy as np
 from oscsolve.pulsation.eigenfunction import NodalMode, Reconstruction
 
 
-def count_labels(negative: np.ndarray, cells: int, stages: int, dof: int, dipole: bool) -> np.ndarray:
+def count_labels(
+    negative: np.ndarray, cells: int, stages: int, dof: int, dipole: bool
+) -> np.ndarray:
     """Radial orders from the number of negative eigenvalues just below each mode.
 
     n = dof * cells * stages + 1 - negative: the part of the action that is the same for a

@@ -14,8 +14,8 @@ from oscsolve.pulsation.mesh import Element, Mesh, lagrange_basis
 from oscsolve.pulsation.sweep import Action, count_negative
 from oscsolve.star.profile import Profile
 
-#: Polishing stops when the Rayleigh quotient moves by less than this, relative, or when it moves
-#: by less than the second number and no longer falls: then round-off is what is left.
+#: Polishing stops when the next change of the Rayleigh quotient will be below this, relative, or
+#: when it moves by less than the second number and no longer falls: what is left is round-off.
 _SETTLED = 3e-14
 _STALLED = 1e-10
 _MOST_STEPS = 60
@@ -48,7 +48,7 @@ class Solution:
     negative : (m,) int, negative eigenvalues of the action just below each
     vector : (m, nodes * dof) nodal q
     swing : (m, cells, s) y = rho r xi_h at the Gauss points
-    noise : (m,) relative size of the last change of lam, a measure of round-off
+    noise : (m,) relative round-off of lam
     """
 
     lam: np.ndarray
@@ -237,11 +237,14 @@ def _iterate(
 ) -> tuple[np.ndarray, np.ndarray]:
     """Rayleigh quotient iteration in all lanes, fenced by brackets that the counts tighten.
 
-    Returns the eigenvalues and the relative size of the last step.
+    Near a mode the vector improves by (step/gap) in each iteration and the quotient by its square,
+    so that step^2/gap is a safe bound of the step to come. Returns eigenvalues and their relative
+    round-off.
     """
     low, high = brackets.low[lanes].copy(), brackets.high[lanes].copy()
     lam = np.array(guess)
-    last = np.full(LANES, np.inf)
+    gap = np.maximum(0.5 * (high - low), 1e-300)
+    last, noise = np.full(LANES, np.inf), np.zeros(LANES)
     settled = np.zeros(LANES, bool)
     for _ in range(_MOST_STEPS):
         work.iterate(action, lam)
@@ -251,11 +254,14 @@ def _iterate(
         slack = scale * np.maximum(10.0 * _SETTLED, 3.0 * np.where(step < _STALLED, step, 0.0))
         outside = (new < low - slack) | (new > high + slack) | ~np.isfinite(new)
         stalled = (step < _STALLED) & (step > 0.1 * last)
-        done = ~settled & ~outside & ((step <= _SETTLED) | stalled)
-        lam, last = np.where(done, new, lam), np.where(settled, last, step)
+        to_come = step * np.minimum(1.0, np.abs(work.step) / gap)
+        done = ~settled & ~outside & ((to_come <= _SETTLED) | stalled)
+        rounding = np.maximum(work.noise / scale, np.where(stalled, step, 0.0))
+        lam, noise = np.where(done, new, lam), np.where(done, rounding, noise)
+        last = step
         settled |= done
         if np.all(settled):
-            return lam, last
+            return lam, noise
         below = work.negative >= brackets.negative[lanes]
         low = np.where(below & ~settled, np.maximum(low, lam), low)
         high = np.where(below | settled, high, np.minimum(high, lam))

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Callable, Sequence
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -98,14 +100,39 @@ def solve_modes(
     findings: list[Finding] = []
     request = _check(star, profile, degrees, band, unit, gravity, surface, tolerance, findings)
     request = replace(request, options=options or SolveOptions())
-    parts = []
-    for done, degree in enumerate(request.degrees):
-        if progress is not None:
-            progress(done, len(request.degrees), f"degree {degree}")
-        parts.append(_one_degree(star, profile, request, degree, findings))
-    if progress is not None:
-        progress(len(request.degrees), len(request.degrees), "done")
+    parts = _all_degrees(star, profile, request, findings, progress)
     return _assemble_set(star, request, parts, findings, band is None)
+
+
+def _all_degrees(
+    star: StarModel,
+    profile: Profile,
+    request: _Request,
+    findings: list[Finding],
+    progress: Progress | None,
+) -> list[_DegreeRows]:
+    """Degrees side by side in threads (compiled code runs without the interpreter's lock)."""
+    degrees, total = request.degrees, len(request.degrees)
+    if progress is not None:
+        progress(0, total, f"degree {degrees[0]}")
+    rows, noticed = [], []
+    with ThreadPoolExecutor(max_workers=min(total, os.cpu_count() or 1)) as pool:
+        jobs = [pool.submit(_one_degree, star, profile, request, degree) for degree in degrees]
+        try:
+            for done, job in enumerate(jobs, start=1):
+                row, found = job.result()
+                rows.append(row)
+                noticed += found
+                if progress is not None:
+                    progress(done, total, f"degree {degrees[done - 1]}")
+        except BaseException:
+            for job in jobs:
+                job.cancel()
+            raise
+    for finding in noticed:
+        if all(known.code != finding.code for known in findings):
+            findings.append(finding)
+    return rows
 
 
 @dataclass(frozen=True, eq=False)
@@ -175,17 +202,16 @@ def _check_degrees(degrees: Sequence[int]) -> tuple[int, ...]:
 
 
 def _one_degree(
-    star: StarModel, profile: Profile, request: _Request, degree: int, findings: list[Finding]
-) -> _DegreeRows:
+    star: StarModel, profile: Profile, request: _Request, degree: int
+) -> tuple[_DegreeRows, list[Finding]]:
+    findings: list[Finding] = []
     low, high, limit = _usable_band(star, profile, request, degree, findings)
-    problem = Problem(
-        degree, request.gravity, request.surface, low, high, limit, request.tolerance
-    )
+    problem = Problem(degree, request.gravity, request.surface, low, high, limit, request.tolerance)
     found = solve_degree(profile, problem, request.options)
     if degree == 0:
         _report_instability(profile, request, found, findings)
     _report_unmet_tolerance(request, degree, found, findings)
-    return _rows(star, profile, request, problem, found)
+    return _rows(star, profile, request, problem, found), findings
 
 
 def _usable_band(
@@ -197,7 +223,7 @@ def _usable_band(
     top = frequency_from_sigma2(cutoff.high, star.nu_dynamical)
     if request.surface == "free":
         if high > cutoff.high and not profile.has_edge:
-            _say_once(findings, "above-cutoff", _free_cutoff_finding(top))
+            findings.append(_free_cutoff_finding(top))
         return low, high, np.inf
     if low >= cutoff.high:
         raise BandError(
@@ -211,7 +237,7 @@ def _usable_band(
             "through an isothermal atmosphere; use a free surface"
         )
     if high > cutoff.high or (low < cutoff.low and degree > 0):
-        _say_once(findings, f"band-cut-l{degree}", _cut_finding(degree, bottom, top))
+        findings.append(_cut_finding(degree, bottom, top))
     inside = (1.0 + 1e-9) * cutoff.low, (1.0 - 1e-9) * cutoff.high
     return max(low, inside[0]) if degree > 0 else low, min(high, inside[1]), inside[1]
 
@@ -234,11 +260,6 @@ def _cut_finding(degree: int, bottom: float, top: float) -> Finding:
         "atmosphere holds waves back; outside they escape and no modes exist",
         "end the band at the cut-off",
     )
-
-
-def _say_once(findings: list[Finding], code: str, finding: Finding) -> None:
-    if all(known.code != code for known in findings):
-        findings.append(finding)
 
 
 def _report_instability(
