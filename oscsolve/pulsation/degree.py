@@ -6,7 +6,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from oscsolve.pulsation.mesh import Element, Mesh, band_mesh, element
+from oscsolve.pulsation.mesh import Element, Mesh, band_mesh, element, model_mesh
 from oscsolve.pulsation.options import SolveOptions
 from oscsolve.pulsation.search import (
     Brackets,
@@ -27,6 +27,8 @@ ROUND_OFF = 1e-13
 #: sides between orders.
 _MARGIN = 2e-3
 _MOST_ROUNDS = 8
+#: Modes of one degree that are held in memory with their vectors.
+_MODES_AT_ONCE = 300
 
 
 @dataclass(frozen=True)
@@ -58,14 +60,16 @@ class DegreeSolution:
     ----------
     solution : modes at the reported order
     error : (m,) estimated error of lam, absolute
-    counted : modes in the band by the counts at its two ends
+    first, beyond : number of the first mode above the lower end of the band, and of the first one
+        above its upper end, by the counts there; comparable between meshes
     mesh, element, action : what they were computed on
     refined : rounds of refinement made
     """
 
     solution: Solution
     error: np.ndarray
-    counted: int
+    first: int
+    beyond: int
     mesh: Mesh
     element: Element
     action: Action
@@ -82,16 +86,21 @@ class _Order:
     solution: Solution
 
     @property
+    def uniform(self) -> int:
+        """Negative eigenvalues that the action of this size has in a uniform medium."""
+        return self.action.dof * self.mesh.size * self.element.gauss.size
+
+    @property
     def index(self) -> np.ndarray:
         """(m,) int, the number of each mode, comparable between orders and meshes."""
-        uniform = self.action.dof * self.mesh.size * self.element.gauss.size
-        return uniform + 1 - self.solution.negative
+        return self.uniform + 1 - self.solution.negative
 
 
 def solve_degree(profile: Profile, problem: Problem, options: SolveOptions) -> DegreeSolution:
     """Find, certify and refine all modes of one degree in the band."""
     low, high = _search_band(problem)
-    mesh = band_mesh(profile, problem.degree, (low, high), options.phase_limit(problem.tolerance))
+    phase = options.phase_limit(problem.tolerance)
+    mesh = band_mesh(profile, problem.degree, (low, high), phase, options.most_cells)
     mesh = mesh.split(np.full(mesh.size, options.cells_factor))
     previous: _Order | None = None
     for rounds in range(_MOST_ROUNDS + 1):
@@ -107,16 +116,36 @@ def solve_degree(profile: Profile, problem: Problem, options: SolveOptions) -> D
             break
         previous, mesh = ladder[2], mesh.split(parts)
     best = ladder[2]
-    ends = count_at(best.action, np.array([problem.low, problem.high]))
+    ends = best.uniform + 1 - count_at(best.action, np.array([problem.low, problem.high]))
     return DegreeSolution(
         solution=best.solution.select(inside),
         error=error[inside],
-        counted=int(ends[0] - ends[1]),
+        first=int(ends[0]),
+        beyond=int(ends[1]),
         mesh=best.mesh,
         element=best.element,
         action=best.action,
         refined=rounds,
     )
+
+
+def sub_bands(profile: Profile, problem: Problem) -> list[Problem]:
+    """The problem in pieces of some hundred modes each, which bounds the memory of a run.
+
+    Pieces are cut where the phase of the waves says; which mode lies on which side is settled by
+    the counts of each piece, whose numbers must join.
+    """
+    low, high = problem.low, problem.high
+    coordinate = PhaseCoordinate(profile, model_mesh(profile), problem.degree, low, high)
+    expected = coordinate.phase[-1] - coordinate.phase[0]
+    parts = int(np.ceil(expected / _MODES_AT_ONCE))
+    if parts <= 1:
+        return [problem]
+    edges = [low, *coordinate.between(low, high, parts), high]
+    return [
+        replace(problem, low=float(a), high=float(b))
+        for a, b in zip(edges[:-1], edges[1:], strict=True)
+    ]
 
 
 def _search_band(problem: Problem) -> tuple[float, float]:
@@ -151,8 +180,8 @@ def _solve_order(
         lam = known.solution.lam
         cuts = np.concatenate(([low], 0.5 * (lam[1:] + lam[:-1]), [high]))
         counts = count_at(action, cuts)
-        uniform = action.dof * order.mesh.size * order.element.gauss.size + 1
-        if np.array_equal(counts[:-1], uniform - known.index) and counts[-1] == counts[-2] - 1:
+        expected = order.uniform + 1 - known.index
+        if np.array_equal(counts[:-1], expected) and counts[-1] == counts[-2] - 1:
             start = transfer(
                 known.solution,
                 action.dof,

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.polynomial import legendre
 
+from oscsolve.errors import BandError
 from oscsolve.star.profile import Profile
 
 #: In a star with an edge the Lagrangian form is used outside this fractional radius.
@@ -55,7 +56,11 @@ def model_mesh(profile: Profile) -> Mesh:
 
 
 def band_mesh(
-    profile: Profile, degree: int, band: tuple[float, float], phase_per_cell: float
+    profile: Profile,
+    degree: int,
+    band: tuple[float, float],
+    phase_per_cell: float,
+    most_cells: int,
 ) -> Mesh:
     """The model's own points, split where a mode of the band turns by more than asked.
 
@@ -65,6 +70,12 @@ def band_mesh(
     band : lowest and highest sigma2
     phase_per_cell : largest change of phase, or of the logarithm of an evanescent amplitude,
         that one cell may hold, radian
+    most_cells : refuse to build a larger mesh
+
+    Raises
+    ------
+    BandError
+        The band needs more cells than that.
     """
     mesh = model_mesh(profile)
     at = profile.at(0.5 * (mesh.node[:-1] + mesh.node[1:]), mesh.interval)
@@ -84,7 +95,14 @@ def band_mesh(
             k2[0] = sound[0] + ll * np.abs(at.n2[0] / lam) / at.x[0] ** 2
         wave = np.maximum(wave, k2)
     phase = np.sqrt(wave) * np.diff(mesh.node)
-    return mesh.split(np.maximum(1, np.ceil(phase / phase_per_cell)).astype(np.int64))
+    parts = np.maximum(1.0, np.ceil(phase / phase_per_cell))
+    if not np.sum(parts) <= most_cells:
+        raise BandError(
+            f"modes of l = {degree} in this band have waves so short that the mesh needs "
+            f"{np.sum(parts):.3g} cells, more than {most_cells}; choose a higher or narrower "
+            "band, or raise most_cells"
+        )
+    return mesh.split(parts.astype(np.int64))
 
 
 @dataclass(frozen=True, eq=False)

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field, fields
 from types import MappingProxyType
+from typing import Any
 
 import numpy as np
 
@@ -16,7 +17,7 @@ from oscsolve.star.model import StarModel
 KINDS = ("radial", "p", "g", "f", "mixed")
 
 
-def _frozen(values: object, dtype: object) -> np.ndarray:
+def _frozen(values: Any, dtype: Any) -> np.ndarray:
     array = np.array(values, dtype=dtype, order="C")
     array.setflags(write=False)
     return array

@@ -12,7 +12,7 @@ import numpy as np
 from oscsolve.errors import BandError, InputError
 from oscsolve.pulsation.boundary import atmosphere_cutoff
 from oscsolve.pulsation.default_band import choose_band
-from oscsolve.pulsation.degree import DegreeSolution, Problem, solve_degree
+from oscsolve.pulsation.degree import DegreeSolution, Problem, solve_degree, sub_bands
 from oscsolve.pulsation.eigenfunction import ModelPoints, Reconstruction
 from oscsolve.pulsation.labels import count_labels, kinds, node_labels
 from oscsolve.pulsation.modeset import Census, Eigenfunctions, ModeSet
@@ -143,6 +143,7 @@ class _DegreeRows:
     low: float  # uHz
     high: float
     counted: int
+    cells: int
     order: np.ndarray
     n_p: np.ndarray
     n_g: np.ndarray
@@ -207,11 +208,16 @@ def _one_degree(
     findings: list[Finding] = []
     low, high, limit = _usable_band(star, profile, request, degree, findings)
     problem = Problem(degree, request.gravity, request.surface, low, high, limit, request.tolerance)
-    found = solve_degree(profile, problem, request.options)
+    pieces, ends = [], []
+    for piece in sub_bands(profile, problem):
+        found = solve_degree(profile, piece, request.options)
+        ends += [found.first, found.beyond]
+        pieces.append(_rows(star, profile, request, piece, found))
     if degree == 0:
         _report_instability(profile, request, found, findings)
-    _report_unmet_tolerance(request, degree, found, findings)
-    return _rows(star, profile, request, problem, found), findings
+    rows = _join_rows(star, problem, pieces, ends[-1] - ends[0])
+    _report_unmet_tolerance(request, rows, findings)
+    return rows, findings
 
 
 def _usable_band(
@@ -284,19 +290,16 @@ def _report_instability(
     )
 
 
-def _report_unmet_tolerance(
-    request: _Request, degree: int, found: DegreeSolution, findings: list[Finding]
-) -> None:
-    lam = found.solution.lam
-    error = 0.5 * found.error / np.maximum(np.abs(lam), 1e-300)
+def _report_unmet_tolerance(request: _Request, rows: _DegreeRows, findings: list[Finding]) -> None:
+    error = 0.5 * rows.error / np.maximum(np.abs(rows.lam), 1e-300)
     late = error > 1.000001 * request.tolerance
     if np.any(late):
         findings.append(
             Finding(
                 "doubt",
-                f"tolerance-missed-l{degree}",
-                f"{np.sum(late)} mode(s) of l = {degree} have error bars above the tolerance "
-                f"{request.tolerance:g}, at worst {error.max():.1e} with {found.mesh.size} cells",
+                f"tolerance-missed-l{rows.degree}",
+                f"{np.sum(late)} mode(s) of l = {rows.degree} have error bars above the tolerance "
+                f"{request.tolerance:g}, at worst {error.max():.1e} with {rows.cells} cells",
                 "round-off or the limit on cells stops refinement; see nu_error",
                 size=float(error.max()),
             )
@@ -333,7 +336,8 @@ def _rows(
         degree=degree,
         low=frequency_from_sigma2(problem.low, star.nu_dynamical),
         high=frequency_from_sigma2(problem.high, star.nu_dynamical),
-        counted=found.counted,
+        counted=found.beyond - found.first,
+        cells=found.mesh.size,
         order=order,
         n_p=n_p,
         n_g=n_g,
@@ -342,6 +346,24 @@ def _rows(
         error=found.error,
         inertia=inertia,
         columns=columns,
+    )
+
+
+def _join_rows(
+    star: StarModel, problem: Problem, pieces: list[_DegreeRows], counted: int
+) -> _DegreeRows:
+    """One degree from its sub-bands."""
+    columns = [piece.columns for piece in pieces if piece.columns is not None]
+    names = ("order", "n_p", "n_g", "kind", "lam", "error", "inertia")
+    joined = {name: np.concatenate([getattr(piece, name) for piece in pieces]) for name in names}
+    return _DegreeRows(
+        degree=problem.degree,
+        low=frequency_from_sigma2(problem.low, star.nu_dynamical),
+        high=frequency_from_sigma2(problem.high, star.nu_dynamical),
+        counted=counted,
+        cells=max(piece.cells for piece in pieces),
+        columns=np.concatenate(columns, axis=1) if columns else None,
+        **joined,
     )
 
 
