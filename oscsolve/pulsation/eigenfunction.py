@@ -55,6 +55,7 @@ class Reconstruction:
         inner = profile.at(mesh.node[1:], mesh.interval)
         self.rho = np.concatenate(([np.nan], inner.rho))
         self.g = np.concatenate(([0.0], inner.g))
+        self.c2 = np.concatenate(([np.nan], inner.c2))
         lagrangian = mesh.lagrangian | (action.ll == 0.0)
         self.shift = np.where(lagrangian, inner.rho * inner.g / mesh.node[1:] ** 2, 0.0)
         at_gauss = mesh.node[:-1, None] + self.width[:, None] * elem.gauss

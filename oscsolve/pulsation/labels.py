@@ -49,14 +49,31 @@ def node_labels(
     if degree == 0:
         return sum(_crossings(radial, np.ones_like(r))) + 1, 0
     if degree == 1 and full_gravity and _is_condensed(rebuilt):
-        m = rebuilt.g[first:] * r**2
-        inner_mean = -(4.0 * np.pi * mode.p2[first:] * r + mode.q2[first:] * r**2) / (3.0 * m)
-        # Near the centre the two nearly cancel; what is left there is discretisation error.
-        clear = np.abs(radial - inner_mean) > 1e-4 * np.abs(radial)
-        begin = int(np.argmax(clear))
-        n_p, n_g = _crossings((radial - inner_mean)[begin:], (horizontal - inner_mean)[begin:])
+        n_p, n_g = _dipole_crossings(mode, rebuilt, lam)
         return (n_p + 1, n_g) if n_p >= n_g else (n_p, n_g)
     return _crossings(radial, horizontal)
+
+
+def _dipole_crossings(mode: NodalMode, rebuilt: Reconstruction, lam: float) -> tuple[int, int]:
+    """Zeros of xi_r relative to the mean displacement xi_m of the mass inside, p-wise and g-wise.
+
+    Where xi_r = xi_m, momentum balance gives
+    r d(xi_r - xi_m)/dr = (2 J - lam r^2/(c^2 J)) (xi_h - xi_m), J = 1 - 4 pi r^3 rho/(3 m),
+    so a zero is p-type where lam r^2/c^2 > 2 J^2. The sign of that factor is used instead of the
+    two slopes: it is the same in a consistent model and does not suffer where N^2 of a model
+    does not quite fit its density.
+    """
+    # Inside the first point of the model J is an extrapolation and the difference is lost in it.
+    first = int(np.count_nonzero(rebuilt.mesh.interval == rebuilt.mesh.interval[0])) + 1
+    r, rho, c2 = rebuilt.mesh.node[first:], rebuilt.rho[first:], rebuilt.c2[first:]
+    m = rebuilt.g[first:] * r**2
+    mean = -(4.0 * np.pi * mode.p2[first:] * r + mode.q2[first:] * r**2) / (3.0 * m)
+    relative = mode.q1[first:] / r**2 - mean
+    at = np.flatnonzero(np.signbit(relative[1:]) != np.signbit(relative[:-1]))
+    condensed = 1.0 - 4.0 * np.pi * rho * r**3 / (3.0 * m)
+    sound = lam * r**2 / c2 > 2.0 * condensed**2
+    n_p = int(np.count_nonzero(sound[at]))
+    return n_p, at.size - n_p
 
 
 def _is_condensed(rebuilt: Reconstruction) -> bool:
