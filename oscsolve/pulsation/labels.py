@@ -83,13 +83,13 @@ def _is_condensed(rebuilt: Reconstruction) -> bool:
 
 
 def _first_reliable(q1: np.ndarray) -> int:
-    """The first node, not the centre, inside which q1 is not lost in the round-off of its neighbour.
+    """The first node, not the centre, at which q1 stands clear of round-off.
 
-    At high degree q1 ~ r^(l+1) falls by more than sixteen digits in one cell near the centre.
+    At high degree q1 ~ r^(l+1) falls below any noise on the way to the centre, where nothing
+    oscillates.
     """
-    size = np.abs(q1)
-    lost = np.flatnonzero(size[1:-1] < 1e-12 * size[2:])
-    return int(lost[-1]) + 2 if lost.size else 1
+    size = np.abs(q1[1:])
+    return int(np.argmax(size > 1e-30 * size.max())) + 1
 
 
 def _crossings(radial: np.ndarray, horizontal: np.ndarray) -> tuple[int, int]:
