@@ -43,7 +43,7 @@ def choose_band(star: StarModel, profile: Profile) -> tuple[tuple[float, float],
 
 
 def _asymptotic_band(star: StarModel) -> tuple[float, float]:
-    """From the large separation [2 int dr/c]^-1 and the period spacing 2 pi^2/(sqrt 2 int N dr/r)."""
+    """From the large separation, [2 int dr/c]^-1, and the period spacing of l = 1."""
     keep = (star.pressure > 0.0) & (star.radius > 0.0)
     r = star.radius[keep]
     slowness = np.sqrt(star.density[keep] / (star.gamma1[keep] * star.pressure[keep]))

@@ -26,7 +26,6 @@ from oscsolve.pulsation.boundary import surface_term
 from oscsolve.pulsation.compiled import LANES, compiled
 from oscsolve.pulsation.sweep import Action, _assemble, _join
 
-
 #: Spacing of double precision numbers around 1.
 EPSILON = float(np.finfo(np.float64).eps)
 
@@ -57,7 +56,7 @@ class Workspace:
         self.noise = np.empty(LANES)
 
     def iterate(self, action: Action, lam: np.ndarray) -> None:
-        """Replace `vector` by the next iterate at `lam`, and fill negative, step, energy and noise."""
+        """Replace `vector` by the next iterate at `lam` and fill the other arrays."""
         inverse_step(
             action,
             lam,

@@ -92,7 +92,8 @@ def solve_modes(
     Examples
     --------
     >>> import oscsolve
-    >>> modes = oscsolve.solve_modes(oscsolve.polytrope(3), degrees=[0], band=(9, 17), unit="sigma2")
+    >>> star = oscsolve.polytrope(3)
+    >>> modes = oscsolve.solve_modes(star, degrees=[0], band=(9, 17), unit="sigma2")
     >>> modes.order.tolist(), modes.complete
     ([1, 2], True)
     """

@@ -149,7 +149,7 @@ def _assemble(action, cell, lam, mu, matrix, negative):
 
 @compiled
 def _join(action, cell, carry, matrix):
-    """Add what lies inside the left node to the form of a cell; returns how many unknowns to eliminate.
+    """Add what lies inside the left node to a cell; returns how many unknowns to eliminate.
 
     The left node is (right + difference), so its form goes to three blocks. At the centre q
     vanishes: there the difference of the left node is minus the right node, not an unknown.
