@@ -193,6 +193,9 @@ def _eliminate(action, lam, mu, vector, swing, rows, negative):
         negative[j] += hidden
         first = carry[0, 0, j] + k11
         y1 = side_carry[0, j] + t11 * vector[base, j]
+        # At a mode found to the last digit a pivot can be zero: any tiny one serves as well.
+        if first == 0.0:
+            first = EPSILON * abs(carry[0, 0, j])
         if first < 0.0:
             negative[j] += 1
         if dof == 2:
@@ -200,6 +203,8 @@ def _eliminate(action, lam, mu, vector, swing, rows, negative):
             y2 = side_carry[1, j] + t12 * vector[base, j] + t22 * vector[base + 1, j]
             coupling = carry[0, 1, j] + k12
             second = carry[1, 1, j] + k22 - coupling * coupling / first
+            if second == 0.0:
+                second = EPSILON * abs(k22)
             if second < 0.0:
                 negative[j] += 1
             vector[base + 1, j] = (y2 - coupling * y1 / first) / second
