@@ -108,10 +108,10 @@ def solve_degree(profile: Profile, problem: Problem, options: SolveOptions) -> D
         error = _error_estimate(ladder)
         inside = (ladder[2].solution.lam >= problem.low) & (ladder[2].solution.lam <= problem.high)
         scale = 2.0 * problem.tolerance * np.abs(ladder[2].solution.lam)
-        late = inside & (error > np.maximum(scale, 2.0 * ROUND_OFF * np.abs(scale)))
-        if not np.any(late) or rounds == _MOST_ROUNDS:
+        late = inside & (error > scale)
+        parts = np.maximum(_cells_to_split(ladder, late), _crowded_cells(ladder[2], inside))
+        if np.all(parts == 1) or rounds == _MOST_ROUNDS:
             break
-        parts = _cells_to_split(ladder, late, scale)
         if mesh.size + np.sum(parts - 1) > options.most_cells:
             break
         previous, mesh = ladder[2], mesh.split(parts)
@@ -227,13 +227,36 @@ def _follow(lower: _Order, upper: _Order, values: np.ndarray) -> np.ndarray:
     return np.array([found.get(i, np.nan) for i in upper.index.tolist()], dtype=float)
 
 
-def _cells_to_split(ladder: list[_Order], late: np.ndarray, scale: np.ndarray) -> np.ndarray:
+def _crowded_cells(order: _Order, inside: np.ndarray) -> np.ndarray:
+    """(cells,) int, 3 for a cell that holds most of the energy of a mode, else 1.
+
+    Such a mode is a defect of the mesh until a finer one shows it again.
+    """
+    action = order.action
+    stages, width = order.element.gauss.size, np.diff(order.mesh.node)[:, None]
+    weight = order.element.weight * width
+    swing = action.point[:, :, 1] * weight
+    lift = np.mean(-action.point[:, :, 8], axis=1) * width[:, 0]
+    parts = np.ones(order.mesh.size, np.int64)
+    for i in np.flatnonzero(inside):
+        q1 = order.solution.vector[i].reshape(-1, action.dof)[::stages, 0]
+        energy = np.sum(swing * order.solution.swing[i] ** 2, axis=1)
+        energy += lift * 0.5 * (q1[1:] ** 2 + q1[:-1] ** 2)
+        parts[energy > 0.5 * np.sum(energy)] = 3
+    return parts
+
+
+def _cells_to_split(ladder: list[_Order], late: np.ndarray) -> np.ndarray:
     """(cells,) int, 2 for the cells that hold the error of the modes that need it, else 1.
 
     The action of the difference of two solutions is the difference of their eigenvalues; taken
-    cell by cell, with absolute values, it shows where that comes from.
+    cell by cell, with absolute values, it shows where that comes from. Absolute terms can exceed
+    the difference by far (at the centre they do), so cells are taken, largest first, until what
+    the others hold is small beside the difference itself.
     """
     lower, upper = ladder[1], ladder[2]
+    if not np.any(late):
+        return np.ones(upper.mesh.size, np.int64)
     places = {number: i for i, number in enumerate(lower.index.tolist())}
     vector, _ = transfer(
         lower.solution, upper.action.dof, (lower.mesh, lower.element), (upper.mesh, upper.element)
@@ -248,7 +271,9 @@ def _cells_to_split(ladder: list[_Order], late: np.ndarray, scale: np.ndarray) -
         share = _absolute_action(upper, difference, upper.solution.lam[i])
         order = np.argsort(share)[::-1]
         running = np.cumsum(share[order])
-        needed = np.searchsorted(running, running[-1] * (1.0 - 0.02)) + 1
+        change = abs(lower.solution.lam[j] - upper.solution.lam[i])
+        rest = min(0.02 * running[-1], 0.1 * change)
+        needed = int(np.searchsorted(running, running[-1] - rest)) + 1
         marked[order[:needed]] = True
     return np.where(marked, 2, 1)
 
@@ -259,6 +284,8 @@ def _absolute_action(order: _Order, vector: np.ndarray, lam: float) -> np.ndarra
     b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = np.moveaxis(action.point, -1, 0)
     beta = b1 / lam if action.ll > 0.0 else np.zeros_like(b1)
     b11 = b0 + beta
+    # Where b0 and beta cancel the terms below are large and cancel too: keep them in proportion.
+    b11 = np.copysign(np.maximum(np.abs(b11), 0.1 * (np.abs(b0) + np.abs(beta))), b11)
     h = np.diff(order.mesh.node)[:, None]
     stages = elem.gauss.size
     cell = np.arange(order.mesh.size)[:, None] * stages + np.arange(stages + 1)
