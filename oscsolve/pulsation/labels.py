@@ -66,7 +66,10 @@ def _dipole_crossings(mode: NodalMode, rebuilt: Reconstruction, lam: float) -> t
     # Inside the first point of the model J is an extrapolation and the difference is lost in it.
     first = int(np.count_nonzero(rebuilt.mesh.interval == rebuilt.mesh.interval[0])) + 1
     r, rho, c2 = rebuilt.mesh.node[first:], rebuilt.rho[first:], rebuilt.c2[first:]
-    m = rebuilt.g[first:] * r**2
+    # The mass that Phi' comes from: where that of the model does not fit its density to a few
+    # digits, near the centre, the difference would show zeros that are not there.
+    shells = 4.0 * np.pi * rebuilt.rho_gauss * rebuilt.r_gauss**2 @ rebuilt.elem.weight
+    m = np.cumsum(shells * rebuilt.width)[first - 1 :]
     mean = -(4.0 * np.pi * mode.p2[first:] * r + mode.q2[first:] * r**2) / (3.0 * m)
     relative = mode.q1[first:] / r**2 - mean
     at = np.flatnonzero(np.signbit(relative[1:]) != np.signbit(relative[:-1]))
