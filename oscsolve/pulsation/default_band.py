@@ -11,6 +11,10 @@ from oscsolve.star.profile import Profile
 
 #: Share of the acoustic cut-off that bounds the modes excited by convection (common practice).
 _CONVECTIVE_BAND = (0.25, 0.9)
+#: Stars with a cooler surface have convective envelopes, K (common practice).
+_COOL = 6800.0
+#: Surface gravities above this belong to white dwarfs, cm s^-2 (common practice).
+_WHITE_DWARF_GRAVITY = 1e7
 #: Orders of p and g modes that the band reaches to in other stars.
 _ORDERS = 12
 
@@ -22,11 +26,7 @@ def choose_band(star: StarModel, profile: Profile) -> tuple[tuple[float, float],
     of its outermost layer, the range excited by convection. Any other star gets about a dozen
     g and p orders around its dynamical frequency, from the asymptotic spacings.
     """
-    x = star.fractional_radius
-    assert star.a_star is not None
-    envelope = (x > 0.9) & (x < 0.98)
-    convective = np.any(envelope) and np.median(star.a_star[envelope]) < 1e-2
-    if convective and not profile.has_edge:
+    if not profile.has_edge and _has_convective_envelope(star):
         cutoff = np.sqrt(atmosphere_cutoff(profile, 0).high) * star.nu_dynamical
         limits = tuple(share * cutoff for share in _CONVECTIVE_BAND)
         why = "0.25 to 0.9 of the acoustic cut-off, for a convective envelope"
@@ -40,6 +40,23 @@ def choose_band(star: StarModel, profile: Profile) -> tuple[tuple[float, float],
         "note", "band-chosen", f"no band was given; {low:g} to {high:g} uHz was chosen ({why})"
     )
     return (low, high), finding
+
+
+def _has_convective_envelope(star: StarModel) -> bool:
+    """By A* in the outer layers, or by the temperature of a star that is no white dwarf.
+
+    Temperature is asked because A* of ionisation zones is wrong in files that lack Gamma1.
+    """
+    x = star.fractional_radius
+    assert star.a_star is not None
+    envelope = (x > 0.8) & (x < 0.98)
+    if np.any(envelope) and np.median(star.a_star[envelope]) < 1e-2:
+        return True
+    if star.temperature is None:
+        return False
+    gravity = star.gravitational_constant * star.total_mass / star.photospheric_radius**2
+    surface = float(np.interp(1.0, x, star.temperature))
+    return surface < _COOL and gravity < _WHITE_DWARF_GRAVITY
 
 
 def _asymptotic_band(star: StarModel) -> tuple[float, float]:
