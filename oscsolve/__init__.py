@@ -23,7 +23,7 @@ if TYPE_CHECKING:
     from oscsolve.pulsation.modeset import Census, Eigenfunction, Eigenfunctions, ModeSet
     from oscsolve.pulsation.options import SolveOptions
     from oscsolve.pulsation.solve import solve_modes
-    from oscsolve.star.build import polytrope, uniform_sphere
+    from oscsolve.star.build import layered_sphere, polytrope, uniform_sphere
     from oscsolve.star.findings import Finding
     from oscsolve.star.formats import read_model, write_model
     from oscsolve.star.model import StarModel
@@ -44,6 +44,7 @@ _HOMES = {
     "OscsolveError": "oscsolve.errors",
     "SolveOptions": "oscsolve.pulsation.options",
     "StarModel": "oscsolve.star.model",
+    "layered_sphere": "oscsolve.star.build",
     "load_modes": "oscsolve.store",
     "polytrope": "oscsolve.star.build",
     "read_model": "oscsolve.star.formats",
@@ -68,6 +69,7 @@ __all__ = [
     "SolveOptions",
     "StarModel",
     "__version__",
+    "layered_sphere",
     "load_modes",
     "polytrope",
     "read_model",
