@@ -22,6 +22,12 @@ def _thinned(star: StarModel, step: int) -> StarModel:
 
 
 @pytest.fixture(scope="session")
+def thinned() -> Callable[[StarModel, int], StarModel]:
+    """Function that keeps every so-many-th point of a star, and its last two."""
+    return _thinned
+
+
+@pytest.fixture(scope="session")
 def coarse_n3() -> StarModel:
     """Polytrope of index 3 with about 30 points: a mesh small enough for dense matrices."""
     return _thinned(polytrope(3), 32)
@@ -29,9 +35,9 @@ def coarse_n3() -> StarModel:
 
 @pytest.fixture(scope="session")
 def stump(coarse_n3) -> StarModel:
-    """The inner 0.6 R of it under a fictitious surface: no edge, so atmospheres are possible."""
+    """The inner 0.97 R of it under a fictitious surface: no edge, so atmospheres are possible."""
     names = ("radius", "mass", "pressure", "density", "gamma1", "a_star")
-    inside = coarse_n3.fractional_radius < 0.6
+    inside = coarse_n3.fractional_radius < 0.97
     return coarse_n3.with_changes(
         **{name: getattr(coarse_n3, name)[inside] for name in names},
         total_mass=float(coarse_n3.mass[inside][-1]),
