@@ -108,7 +108,7 @@ def solve_degree(profile: Profile, problem: Problem, options: SolveOptions) -> D
         error = _error_estimate(ladder)
         inside = (ladder[2].solution.lam >= problem.low) & (ladder[2].solution.lam <= problem.high)
         scale = 2.0 * problem.tolerance * np.abs(ladder[2].solution.lam)
-        late = inside & (error > scale)
+        late = inside & (error > np.maximum(scale, 2.0 * _rounding(ladder[2].solution)))
         parts = np.maximum(_cells_to_split(ladder, late), _crowded_cells(ladder[2], inside))
         if np.all(parts == 1) or rounds == _MOST_ROUNDS:
             break
@@ -212,8 +212,12 @@ def _error_estimate(ladder: list[_Order]) -> np.ndarray:
     unknown = np.isnan(d2)
     worst = np.nanmax(d2 / np.abs(lam)) if not np.all(unknown) else np.inf
     d2 = np.where(unknown, worst * np.abs(lam), d2)
-    noise = np.maximum(ROUND_OFF, 2.0 * top.solution.noise)
-    return d2 * np.where(unknown, 1.0, ratio) + noise * np.abs(lam)
+    return d2 * np.where(unknown, 1.0, ratio) + _rounding(top.solution)
+
+
+def _rounding(solution: Solution) -> np.ndarray:
+    """(m,) the part of the error that no refinement takes away."""
+    return np.maximum(ROUND_OFF * np.abs(solution.lam), 2.0 * solution.noise)
 
 
 def _change(lower: _Order, upper: _Order) -> np.ndarray:

@@ -48,7 +48,7 @@ class Solution:
     negative : (m,) int, negative eigenvalues of the action just below each
     vector : (m, nodes * dof) nodal q
     swing : (m, cells, s) y = rho r xi_h at the Gauss points
-    noise : (m,) relative round-off of lam
+    noise : (m,) round-off of lam, absolute
     """
 
     lam: np.ndarray
@@ -238,8 +238,8 @@ def _iterate(
     """Rayleigh quotient iteration in all lanes, fenced by brackets that the counts tighten.
 
     Near a mode the vector improves by (step/gap) in each iteration and the quotient by its square,
-    so that step^2/gap is a safe bound of the step to come. Returns eigenvalues and their relative
-    round-off.
+    so that step^2/gap is a safe bound of the step to come. Returns eigenvalues and their
+    absolute round-off.
     """
     low, high = brackets.low[lanes].copy(), brackets.high[lanes].copy()
     lam = np.array(guess)
@@ -248,15 +248,17 @@ def _iterate(
     settled = np.zeros(LANES, bool)
     for _ in range(_MOST_STEPS):
         work.iterate(action, lam)
-        scale = np.maximum(np.abs(lam), 1e-300)
+        # Beside a neutral mode, lam = 0, only the terms that cancel there give a scale.
+        scale = np.maximum(np.abs(lam), work.noise)
         step = np.abs(work.step) / scale
         new = lam + work.step
         slack = scale * np.maximum(10.0 * _SETTLED, 3.0 * np.where(step < _STALLED, step, 0.0))
+        slack = np.maximum(slack, 3.0 * work.noise)
         outside = (new < low - slack) | (new > high + slack) | ~np.isfinite(new)
         stalled = (step < _STALLED) & (step > 0.1 * last)
         to_come = step * np.minimum(1.0, np.abs(work.step) / gap)
         done = ~settled & ~outside & ((to_come <= _SETTLED) | stalled)
-        rounding = np.maximum(work.noise / scale, np.where(stalled, step, 0.0))
+        rounding = np.maximum(work.noise, np.where(stalled, step * scale, 0.0))
         lam, noise = np.where(done, new, lam), np.where(done, rounding, noise)
         last = step
         settled |= done
