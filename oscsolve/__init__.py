@@ -26,6 +26,7 @@ if TYPE_CHECKING:
     from oscsolve.star.build import layered_sphere, polytrope, uniform_sphere
     from oscsolve.star.findings import Finding
     from oscsolve.star.formats import read_model, write_model
+    from oscsolve.star.inspection import Figures, Inspection, inspect_model
     from oscsolve.star.model import StarModel
     from oscsolve.store import load_modes, save_modes
 
@@ -35,15 +36,18 @@ _HOMES = {
     "Census": "oscsolve.pulsation.modeset",
     "Eigenfunction": "oscsolve.pulsation.modeset",
     "Eigenfunctions": "oscsolve.pulsation.modeset",
+    "Figures": "oscsolve.star.inspection",
     "Finding": "oscsolve.star.findings",
     "IncompleteError": "oscsolve.errors",
     "InputError": "oscsolve.errors",
+    "Inspection": "oscsolve.star.inspection",
     "MissingPackageError": "oscsolve.errors",
     "ModeSet": "oscsolve.pulsation.modeset",
     "ModelError": "oscsolve.errors",
     "OscsolveError": "oscsolve.errors",
     "SolveOptions": "oscsolve.pulsation.options",
     "StarModel": "oscsolve.star.model",
+    "inspect_model": "oscsolve.star.inspection",
     "layered_sphere": "oscsolve.star.build",
     "load_modes": "oscsolve.store",
     "polytrope": "oscsolve.star.build",
@@ -59,9 +63,11 @@ __all__ = [
     "Census",
     "Eigenfunction",
     "Eigenfunctions",
+    "Figures",
     "Finding",
     "IncompleteError",
     "InputError",
+    "Inspection",
     "MissingPackageError",
     "ModeSet",
     "ModelError",
@@ -69,6 +75,7 @@ __all__ = [
     "SolveOptions",
     "StarModel",
     "__version__",
+    "inspect_model",
     "layered_sphere",
     "load_modes",
     "polytrope",

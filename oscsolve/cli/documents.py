@@ -56,7 +56,7 @@ def json_document(modes: ModeSet) -> str:
         ),
         "findings": [asdict(found) for found in (*modes.star.findings, *modes.findings)],
     }
-    return json.dumps(_plain(document), allow_nan=False, ensure_ascii=False, indent=1)
+    return json.dumps(plain(document), allow_nan=False, ensure_ascii=False, indent=1)
 
 
 def csv_lines(modes: ModeSet) -> Iterator[str]:
@@ -88,14 +88,14 @@ def _rows(columns: dict[str, np.ndarray]) -> list[dict[str, object]]:
     return [dict(zip(columns, row, strict=True)) for row in zip(*lists, strict=True)]
 
 
-def _plain(value: object) -> object:
+def plain(value: object) -> object:
     """`value` without numpy types and without numbers that JSON cannot hold."""
     if isinstance(value, dict):
-        return {str(name): _plain(item) for name, item in value.items()}
+        return {str(name): plain(item) for name, item in value.items()}
     if isinstance(value, list | tuple):
-        return [_plain(item) for item in value]
+        return [plain(item) for item in value]
     if isinstance(value, np.generic | np.ndarray):
-        return _plain(value.tolist())
+        return plain(value.tolist())
     if isinstance(value, float) and not math.isfinite(value):
         return None
     return value

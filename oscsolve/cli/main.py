@@ -18,6 +18,7 @@ from oscsolve.version import __version__
 #: Kept here so that the overview need not load the commands.
 COMMANDS = {
     "modes": ("modes", "List the modes of one star, with a proof that none is missing."),
+    "inspect": ("inspect", "Tell what a model holds and what is wrong or doubtful about it."),
     "build": ("build", "Make an analytic star and write it as a model file."),
 }
 
