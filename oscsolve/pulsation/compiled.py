@@ -4,8 +4,10 @@ from __future__ import annotations
 
 from numba import njit
 
-#: Trial frequencies treated side by side in every compiled sweep.
-LANES = 8
+#: Most trial frequencies treated side by side in a compiled sweep. Innermost loops run over them;
+#: their number is a run-time value, because the compiler turns a loop of known short length into
+#: single operations first and then finds no vectors in it.
+LANES = 64
 
 #: Contracting a*b + c to one instruction is allowed; assuming that no NaN occurs is not.
 compiled = njit(cache=True, nogil=True, error_model="numpy", fastmath={"contract", "nsz"})

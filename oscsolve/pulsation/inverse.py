@@ -23,7 +23,7 @@ from __future__ import annotations
 import numpy as np
 
 from oscsolve.pulsation.boundary import surface_term
-from oscsolve.pulsation.compiled import LANES, compiled
+from oscsolve.pulsation.compiled import compiled
 from oscsolve.pulsation.sweep import Action, _assemble, _join
 
 #: Spacing of double precision numbers around 1.
@@ -35,25 +35,41 @@ class Workspace:
 
     Attributes
     ----------
-    vector : (nodes * dof, LANES) nodal values of q, centre first
-    swing : (cells, s, LANES) y at the Gauss points
-    rows : (cells, pivots, size, LANES) the factors of the elimination
-    negative : (LANES,) int64, eigenvalues of the action below zero at lam
-    step : (LANES,) -S/T, what to add to lam
-    energy : (LANES,) 2 T of the vector before it was scaled to T = 1/2
-    noise : (LANES,) round-off of lam to expect from the size of the terms of S
+    vector : (nodes * dof, lanes) nodal values of q, centre first
+    swing : (cells, s, lanes) y at the Gauss points
+    rows : (cells, pivots, size, lanes) the factors of the elimination
+    negative : (lanes,) int64, eigenvalues of the action below zero at lam
+    step : (lanes,) -S/T, what to add to lam
+    energy : (lanes,) 2 T of the vector before it was scaled to T = 1/2
+    noise : (lanes,) round-off of lam to expect from the size of the terms of S
     """
 
-    def __init__(self, action: Action) -> None:
+    def __init__(self, action: Action, lanes: int) -> None:
         stages, nodes = action.value.shape
         cells, dof = action.width.size, action.dof
-        self.vector = np.empty(((cells * stages + 1) * dof, LANES))
-        self.swing = np.zeros((cells, stages, LANES))
-        self.rows = np.empty((cells, dof * (nodes - 1), dof * nodes, LANES))
-        self.negative = np.zeros(LANES, np.int64)
-        self.step = np.empty(LANES)
-        self.energy = np.empty(LANES)
-        self.noise = np.empty(LANES)
+        self._shapes = (
+            ((cells * stages + 1) * dof,),
+            (cells, stages),
+            (cells, dof * (nodes - 1), dof * nodes),
+        )
+        self._memory = tuple(np.empty(int(np.prod(shape)) * lanes) for shape in self._shapes)
+        self._use(lanes)
+        self.swing[:] = 0.0
+
+    def _use(self, lanes: int) -> None:
+        """Lay arrays of this many lanes over the memory."""
+        self.vector, self.swing, self.rows = (
+            memory[: int(np.prod(shape)) * lanes].reshape(*shape, lanes)
+            for memory, shape in zip(self._memory, self._shapes, strict=True)
+        )
+        self.negative = np.zeros(lanes, np.int64)
+        self.step, self.energy, self.noise = np.empty(lanes), np.empty(lanes), np.empty(lanes)
+
+    def keep(self, lanes: np.ndarray) -> None:
+        """Go on with some of the lanes only: those where the mask is True."""
+        vector, swing = self.vector[:, lanes], self.swing[:, :, lanes]
+        self._use(int(np.count_nonzero(lanes)))
+        self.vector[:], self.swing[:] = vector, swing
 
     def iterate(self, action: Action, lam: np.ndarray) -> None:
         """Replace `vector` by the next iterate at `lam` and fill the other arrays."""
@@ -73,8 +89,9 @@ class Workspace:
 @compiled
 def inverse_step(action, lam, vector, swing, rows, negative, step, energy, noise):
     """One step of inverse iteration in every lane; arguments as in `Workspace`."""
-    mu = np.empty(LANES)
-    for j in range(LANES):
+    lanes = lam.size
+    mu = np.empty(lanes)
+    for j in range(lanes):
         negative[j] = 0
         mu[j] = 1.0 / lam[j] if action.ll > 0.0 else 0.0
     _eliminate(action, lam, mu, vector, swing, rows, negative)
@@ -86,43 +103,45 @@ def inverse_step(action, lam, vector, swing, rows, negative, step, energy, noise
 def _point_values(action, cell, k, vector, q1, e, q2, f):
     """q1, h (q1' - c11 q1), q2 and h (q2' - c21 q1) at Gauss point k of a cell, all lanes."""
     dof, stages = action.dof, action.value.shape[0]
+    lanes = q1.size
     base = cell * stages * dof
     end = base + stages * dof
-    for j in range(LANES):
+    for j in range(lanes):
         q1[j], e[j] = vector[end, j], 0.0
         q2[j], f[j] = vector[end + dof - 1, j], 0.0
     for i in range(stages):
         node = base + dof * (i + 1) if i < stages - 1 else base
         v, s = action.value[k, i], action.slope[k, i]
-        for j in range(LANES):
+        for j in range(lanes):
             difference = vector[node, j] - vector[end, j]
             q1[j] += v * difference
             e[j] += s * difference
         if dof == 2:
-            for j in range(LANES):
+            for j in range(lanes):
                 difference = vector[node + 1, j] - vector[end + 1, j]
                 q2[j] += v * difference
                 f[j] += s * difference
     h = action.width[cell]
     c11, c21 = h * action.point[cell, k, 5], h * action.point[cell, k, 6]
-    for j in range(LANES):
+    for j in range(lanes):
         e[j] -= c11 * q1[j]
         f[j] -= c21 * q1[j]
 
 
 @compiled
-def _energy_gradient(action, cell, mu, vector, swing, right_side):
+def _energy_gradient(action, cell, mu, vector, swing, scratch, right_side):
     """Derivative of T by the nodal q of one cell, that by y eliminated."""
     dof, stages = action.dof, action.value.shape[0]
+    lanes = mu.size
     h = action.width[cell]
-    q1, e, q2, f = np.empty(LANES), np.empty(LANES), np.empty(LANES), np.empty(LANES)
-    inertia, push = np.empty(LANES), np.empty(LANES)
+    q1, e, q2, f = scratch[0], scratch[1], scratch[2], scratch[3]
+    inertia, push = scratch[4], scratch[5]
     right_side[:] = 0.0
     for k in range(stages):
         b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = action.point[cell, k]
         w = action.weight[k]
         _point_values(action, cell, k, vector, q1, e, q2, f)
-        for j in range(LANES):
+        for j in range(lanes):
             b11 = b0 + b1 * mu[j]
             if b11 == 0.0:
                 b11 = -1e-300
@@ -131,31 +150,32 @@ def _energy_gradient(action, cell, mu, vector, swing, right_side):
         for i in range(stages + 1):
             v = action.value[k, i]
             along = action.slope[k, i] + h * (b0 * s1 - c11) * v
-            for j in range(LANES):
+            for j in range(lanes):
                 right_side[dof * i, j] += inertia[j] * v + push[j] * along
             if dof == 2:
-                for j in range(LANES):
+                for j in range(lanes):
                     right_side[2 * i + 1, j] += push[j] * h * b0 * s2 * v
 
 
 @compiled
 def _eliminate(action, lam, mu, vector, swing, rows, negative):
     """Factor the action and carry the right side along; leaves it in `vector`."""
-    dof = action.dof
+    dof, lanes = action.dof, lam.size
     stages, nodes = action.value.shape
     cells = action.width.size
     size, inner = dof * nodes, dof * (nodes - 2)
     right = inner + dof
-    matrix = np.empty((size, size, LANES))
-    carry = np.zeros((dof, dof, LANES))
-    side = np.empty((size, LANES))
-    side_carry = np.zeros((dof, LANES))
-    inverse, factor = np.empty(LANES), np.empty(LANES)
+    matrix = np.empty((size, size, lanes))
+    carry = np.zeros((dof, dof, lanes))
+    side = np.empty((size, lanes))
+    side_carry = np.zeros((dof, lanes))
+    inverse, factor = np.empty(lanes), np.empty(lanes)
+    scratch = np.empty((6, lanes))
     for cell in range(cells):
-        _assemble(action, cell, lam, mu, matrix, negative)
-        _energy_gradient(action, cell, mu, vector, swing, side)
+        _assemble(action, cell, lam, mu, scratch, matrix, negative)
+        _energy_gradient(action, cell, mu, vector, swing, scratch, side)
         last = _join(action, cell, carry, matrix)
-        for j in range(LANES):
+        for j in range(lanes):
             for a in range(dof):
                 if cell == 0:
                     side[right + a, j] -= side[inner + a, j]
@@ -163,32 +183,32 @@ def _eliminate(action, lam, mu, vector, swing, rows, negative):
                     side[inner + a, j] += side_carry[a, j]
                     side[right + a, j] += side_carry[a, j]
         for p in range(last):
-            for j in range(LANES):
+            for j in range(lanes):
                 inverse[j] = 1.0 / matrix[p, p, j]
                 if inverse[j] < 0.0:
                     negative[j] += 1
                 rows[cell, p, p, j] = inverse[j]
             for a in range(p + 1, size):
-                for j in range(LANES):
+                for j in range(lanes):
                     factor[j] = matrix[p, a, j] * inverse[j]
                     rows[cell, p, a, j] = factor[j]
                     side[a, j] -= factor[j] * side[p, j]
                 for b in range(a, size):
-                    for j in range(LANES):
+                    for j in range(lanes):
                         matrix[a, b, j] -= factor[j] * matrix[p, b, j]
         base = cell * stages * dof
         for p in range(right):
             node = base + dof + p if p < inner else base + p - inner
-            for j in range(LANES):
+            for j in range(lanes):
                 # q vanishes at the centre, which is not among the unknowns.
                 vector[node, j] = side[p, j] if p < last else 0.0
-        for j in range(LANES):
+        for j in range(lanes):
             for a in range(dof):
                 side_carry[a, j] = side[right + a, j]
                 for b in range(a, dof):
                     carry[a, b, j] = matrix[right + a, right + b, j]
     base = cells * stages * dof
-    for j in range(LANES):
+    for j in range(lanes):
         k11, k12, k22, t11, t12, t22, hidden = surface_term(action.top, lam[j], mu[j])
         negative[j] += hidden
         first = carry[0, 0, j] + k11
@@ -215,7 +235,7 @@ def _eliminate(action, lam, mu, vector, swing, rows, negative):
 @compiled
 def _substitute(action, vector, rows):
     """Back substitution, surface to centre: differences from the right node, then nodal values."""
-    dof = action.dof
+    dof, lanes = action.dof, vector.shape[1]
     stages, nodes = action.value.shape
     size, inner = dof * nodes, dof * (nodes - 2)
     right = inner + dof
@@ -225,7 +245,7 @@ def _substitute(action, vector, rows):
         last = inner if cell == 0 else right
         for p in range(last - 1, -1, -1):
             node = base + dof + p if p < inner else base + p - inner
-            for j in range(LANES):
+            for j in range(lanes):
                 vector[node, j] *= rows[cell, p, p, j]
             for a in range(p + 1, size):
                 if a < inner:
@@ -234,35 +254,35 @@ def _substitute(action, vector, rows):
                     other = base + a - inner
                 else:
                     other = end + a - right
-                for j in range(LANES):
+                for j in range(lanes):
                     vector[node, j] -= rows[cell, p, a, j] * vector[other, j]
         for p in range(last):
             node = base + dof + p if p < inner else base + p - inner
-            for j in range(LANES):
+            for j in range(lanes):
                 vector[node, j] += vector[end + p % dof, j]
 
 
 @compiled
 def _quotient(action, lam, mu, vector, swing, step, energy, noise):
     """S and T of the vector, term by term; scales it to T = 1/2 and estimates round-off."""
-    dof = action.dof
+    dof, lanes = action.dof, lam.size
     stages = action.value.shape[0]
     cells = action.width.size
     base = cells * stages * dof
-    total, size = np.zeros(LANES), np.zeros(LANES)
-    q1, e, q2, f = np.empty(LANES), np.empty(LANES), np.empty(LANES), np.empty(LANES)
-    for j in range(LANES):
+    total, size = np.zeros(lanes), np.zeros(lanes)
+    q1, e, q2, f = np.empty(lanes), np.empty(lanes), np.empty(lanes), np.empty(lanes)
+    for j in range(lanes):
         energy[j] = 0.0
     for cell in range(cells):
         h = action.width[cell]
         node = cell * stages * dof
-        for j in range(LANES):
+        for j in range(lanes):
             total[j] += action.node_term[cell] * vector[node, j] ** 2
         for k in range(stages):
             b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = action.point[cell, k]
             w = action.weight[k] * h
             _point_values(action, cell, k, vector, q1, e, q2, f)
-            for j in range(LANES):
+            for j in range(lanes):
                 z = s1 * q1[j] + (s2 * q2[j] if dof == 2 else 0.0)
                 b11 = b0 + b1 * mu[j]
                 if b11 == 0.0:
@@ -279,8 +299,8 @@ def _quotient(action, lam, mu, vector, swing, step, energy, noise):
                 size[j] += w * (abs(squeeze) + abs(shear) + abs(lift) + abs(field))
                 energy[j] += w * kinetic
                 swing[cell, k, j] = y
-    scale = np.empty(LANES)
-    for j in range(LANES):
+    scale = np.empty(lanes)
+    for j in range(lanes):
         k11, k12, k22, t11, t12, t22, _ = surface_term(action.top, lam[j], mu[j])
         a, b = vector[base, j], vector[base + dof - 1, j]
         total[j] += k11 * a * a
@@ -292,9 +312,9 @@ def _quotient(action, lam, mu, vector, swing, step, energy, noise):
         noise[j] = EPSILON * (abs(lam[j]) + size[j] / abs(energy[j]))
         scale[j] = 1.0 / np.sqrt(abs(energy[j]))
     for i in range(base + dof):
-        for j in range(LANES):
+        for j in range(lanes):
             vector[i, j] *= scale[j]
     for cell in range(cells):
         for k in range(stages):
-            for j in range(LANES):
+            for j in range(lanes):
                 swing[cell, k, j] *= scale[j]

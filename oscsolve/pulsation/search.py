@@ -19,6 +19,8 @@ from oscsolve.star.profile import Profile
 _SETTLED = 3e-14
 _STALLED = 1e-10
 _MOST_STEPS = 60
+#: Memory that the factors of one batch of modes may take, bytes.
+_FACTOR_BYTES = 64_000_000
 #: Relative width of a bracket that cannot be split any further.
 _NARROWEST = 4e-15
 
@@ -66,14 +68,16 @@ class Solution:
 def count_at(action: Action, lam: np.ndarray) -> np.ndarray:
     """(k,) int, negative eigenvalues of the action at each of the (k,) values of lam."""
     counts = np.empty(lam.size, np.int64)
-    negative = np.zeros(LANES, np.int64)
-    for start in range(0, lam.size, LANES):
-        batch = lam[start : start + LANES]
-        padded = np.full(LANES, batch[-1])
-        padded[: batch.size] = batch
-        count_negative(action, padded, negative)
-        counts[start : start + LANES] = negative[: batch.size]
+    for batch in batches(lam.size, LANES):
+        count_negative(action, lam[batch], counts[batch])
     return counts
+
+
+def batches(items: int, most: int) -> list[slice]:
+    """Slices that cut `items` into the fewest batches of at most `most`, of even size."""
+    number = max(1, -(-items // most))
+    edges = [items * i // number for i in range(number + 1)]
+    return [slice(a, b) for a, b in zip(edges[:-1], edges[1:], strict=True)]
 
 
 class PhaseCoordinate:
@@ -131,7 +135,7 @@ def isolate(
     done: list[tuple[float, float, int]] = []
     work = [(low, high, int(first), int(last))]
     while work:
-        share = max(1, 2 * LANES // len(work))
+        share = max(1, LANES // len(work))
         cuts = []
         for a, b, above, below in work:
             if b - a <= _NARROWEST * max(abs(a), abs(b)):
@@ -210,7 +214,6 @@ def polish(
         return empty_solution(action)
     guess = 0.5 * (brackets.low + brackets.high) if guess is None else guess
     vector, swing = random_start(action, modes) if start is None else start
-    work = Workspace(action)
     out = Solution(
         lam=np.empty(modes),
         negative=brackets.negative,
@@ -218,60 +221,66 @@ def polish(
         swing=np.empty_like(swing),
         noise=np.empty(modes),
     )
-    for first in range(0, modes, LANES):
-        lanes = np.minimum(np.arange(first, first + LANES), modes - 1)
-        work.vector[:] = vector[lanes].T
-        work.swing[:] = np.moveaxis(swing[lanes], 0, -1)
-        lam, noise = _iterate(action, work, brackets, lanes, guess[lanes])
-        kept = slice(first, min(first + LANES, modes))
-        size = kept.stop - first
-        out.lam[kept] = lam[:size]
-        out.noise[kept] = noise[:size]
-        out.vector[kept] = work.vector.T[:size]
-        out.swing[kept] = np.moveaxis(work.swing, -1, 0)[:size]
+    for batch in batches(modes, _lanes_in_memory(action)):
+        work = Workspace(action, batch.stop - batch.start)
+        work.vector[:] = vector[batch].T
+        work.swing[:] = np.moveaxis(swing[batch], 0, -1)
+        _iterate(action, work, brackets, np.arange(batch.start, batch.stop), guess, out)
     return out
 
 
-def _iterate(
-    action: Action, work: Workspace, brackets: Brackets, lanes: np.ndarray, guess: np.ndarray
-) -> tuple[np.ndarray, np.ndarray]:
-    """Rayleigh quotient iteration in all lanes, fenced by brackets that the counts tighten.
+def _lanes_in_memory(action: Action) -> int:
+    """How many modes can be iterated side by side within the memory allowed for factors."""
+    stages, nodes = action.value.shape
+    one = 8 * action.width.size * action.dof * (nodes - 1) * action.dof * nodes
+    return int(np.clip(_FACTOR_BYTES // one, 4, LANES))
 
-    Near a mode the vector improves by (step/gap) in each iteration and the quotient by its square,
-    so that step^2/gap is a safe bound of the step to come. Returns eigenvalues and their
-    absolute round-off.
+
+def _iterate(
+    action: Action,
+    work: Workspace,
+    brackets: Brackets,
+    modes: np.ndarray,
+    guess: np.ndarray,
+    out: Solution,
+) -> None:
+    """Rayleigh quotient iteration of some modes side by side, each leaving when it has settled.
+
+    Iterates are fenced by the brackets, which the counts tighten. Near a mode the vector improves
+    by (step/gap) in each iteration and the quotient by its square, so that step^2/gap is a safe
+    bound of the step to come.
     """
-    low, high = brackets.low[lanes].copy(), brackets.high[lanes].copy()
-    lam = np.array(guess)
+    low, high = brackets.low[modes], brackets.high[modes]
     gap = np.maximum(0.5 * (high - low), 1e-300)
-    last, noise = np.full(LANES, np.inf), np.zeros(LANES)
-    settled = np.zeros(LANES, bool)
+    lam, last = guess[modes], np.full(modes.size, np.inf)
     for _ in range(_MOST_STEPS):
         work.iterate(action, lam)
-        # Beside a neutral mode, lam = 0, only the terms that cancel there give a scale.
-        scale = np.maximum(np.abs(lam), work.noise)
-        step = np.abs(work.step) / scale
-        new = lam + work.step
+        scale = np.maximum(np.abs(lam), 1e-300)
+        step, new = np.abs(work.step) / scale, lam + work.step
         slack = scale * np.maximum(10.0 * _SETTLED, 3.0 * np.where(step < _STALLED, step, 0.0))
-        slack = np.maximum(slack, 3.0 * work.noise)
         outside = (new < low - slack) | (new > high + slack) | ~np.isfinite(new)
         stalled = (step < _STALLED) & (step > 0.1 * last)
         to_come = step * np.minimum(1.0, np.abs(work.step) / gap)
-        done = ~settled & ~outside & ((to_come <= _SETTLED) | stalled)
-        rounding = np.maximum(work.noise, np.where(stalled, step * scale, 0.0))
-        lam, noise = np.where(done, new, lam), np.where(done, rounding, noise)
-        last = step
-        settled |= done
-        if np.all(settled):
-            return lam, noise
-        below = work.negative >= brackets.negative[lanes]
-        low = np.where(below & ~settled, np.maximum(low, lam), low)
-        high = np.where(below | settled, high, np.minimum(high, lam))
-        lam = np.where(settled, lam, np.where(outside, 0.5 * (low + high), new))
-    worst = lanes[int(np.argmin(settled))]
+        done = ~outside & ((to_come <= _SETTLED) | stalled)
+        if np.any(done):
+            here = modes[done]
+            out.lam[here] = new[done]
+            out.noise[here] = np.maximum(work.noise / scale, np.where(stalled, step, 0.0))[done]
+            out.vector[here] = work.vector[:, done].T
+            out.swing[here] = np.moveaxis(work.swing[:, :, done], -1, 0)
+            if np.all(done):
+                return
+        below = work.negative >= brackets.negative[modes]
+        low = np.where(below, np.maximum(low, lam), low)
+        high = np.where(below, high, np.minimum(high, lam))
+        lam, last = np.where(outside, 0.5 * (low + high), new), step
+        if np.any(done):
+            work.keep(~done)
+            columns = (modes, low, high, gap, lam, last)
+            modes, low, high, gap, lam, last = (column[~done] for column in columns)
     raise IncompleteError(
-        f"the mode between sigma2 = {brackets.low[worst]:.10g} and {brackets.high[worst]:.10g} "
-        "did not settle"
+        f"the mode between sigma2 = {brackets.low[modes[0]]:.10g} and "
+        f"{brackets.high[modes[0]]:.10g} did not settle"
     )
 
 

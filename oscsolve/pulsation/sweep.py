@@ -25,7 +25,7 @@ By Sylvester's law of inertia the signs of all pivots together, those of the p i
 is a negative one), count the negative eigenvalues of the action: a number that falls by one at
 every mode as lam grows.
 
-Every sweep treats `LANES` trial values of lam side by side: the last axis of all work arrays.
+Every sweep treats several trial values of lam side by side: the last axis of all work arrays.
 """
 
 from __future__ import annotations
@@ -35,7 +35,7 @@ from typing import NamedTuple
 import numpy as np
 
 from oscsolve.pulsation.boundary import Surface, surface_numbers, surface_term
-from oscsolve.pulsation.compiled import LANES, compiled
+from oscsolve.pulsation.compiled import compiled
 from oscsolve.pulsation.equations import coefficients, degrees_of_freedom
 from oscsolve.pulsation.mesh import Element, Mesh
 from oscsolve.star.profile import Profile
@@ -100,28 +100,31 @@ def _node_terms(profile: Profile, mesh: Mesh, lagrangian: np.ndarray) -> np.ndar
 
 
 @compiled
-def _assemble(action, cell, lam, mu, matrix, negative):
+def _assemble(action, cell, lam, mu, scratch, matrix, negative):
     """Upper triangle of the cell's quadratic form 2 S, and one count for each B11 > 0."""
-    dof = action.dof
+    dof, lanes = action.dof, lam.size
+    ee, ez, zz, q1q1 = scratch[0], scratch[1], scratch[2], scratch[3]
     stages, nodes = action.value.shape
     h = action.width[cell]
     matrix[:] = 0.0
     for k in range(stages):
         b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = action.point[cell, k]
         w = action.weight[k]
-        ee, ez, zz, q1q1 = np.empty(LANES), np.empty(LANES), np.empty(LANES), np.empty(LANES)
-        for j in range(LANES):
+        dd, dq, qq = w / (h * b22), -w * c21 / b22, h * w * c21 * c21 / b22
+        if dof == 1:
+            qq = 0.0
+        for j in range(lanes):
             beta = b1 * mu[j]
             b11 = b0 + beta
             if b11 == 0.0:
                 b11 = -1e-300
             if b11 > 0.0:
                 negative[j] += 1
-            ee[j] = w / (h * b11)
-            ez[j] = -beta * w / b11
-            zz[j] = -h * w * b0 * beta / b11
-            q1q1[j] = -h * w * (d0 + d1 * lam[j])
-        dd, dq, qq = w / (h * b22), -w * c21 / b22, h * w * c21 * c21 / b22
+            factor = w / b11
+            ee[j] = factor / h
+            ez[j] = -beta * factor
+            zz[j] = -h * b0 * beta * factor
+            q1q1[j] = zz[j] * s1 * s1 - h * w * (d0 + d1 * lam[j]) + qq
         for i in range(nodes):
             vi, ei = action.value[k, i], action.slope[k, i] - h * c11 * action.value[k, i]
             for m in range(nodes):
@@ -130,21 +133,19 @@ def _assemble(action, cell, lam, mu, matrix, negative):
                 if m >= i:
                     f, g = ei * em, s1 * (ei * vm + vi * em)
                     a, b = dof * i, dof * m
-                    for j in range(LANES):
-                        matrix[a, b, j] += (
-                            ee[j] * f
-                            + ez[j] * g
-                            + (zz[j] * s1 * s1 + q1q1[j] + (dof - 1) * qq) * vv
-                        )
+                    for j in range(lanes):
+                        matrix[a, b, j] += ee[j] * f + ez[j] * g + q1q1[j] * vv
                 if dof == 2:
                     if m >= i:
                         f = dd * action.slope[k, i] * action.slope[k, m] - h * w * d2 * vv
-                        for j in range(LANES):
-                            matrix[2 * i + 1, 2 * m + 1, j] += f + zz[j] * s2 * s2 * vv
+                        g = s2 * s2 * vv
+                        for j in range(lanes):
+                            matrix[2 * i + 1, 2 * m + 1, j] += f + zz[j] * g
                     a, b = min(2 * i, 2 * m + 1), max(2 * i, 2 * m + 1)
                     f, g = s2 * ei * vm, dq * vi * action.slope[k, m]
-                    for j in range(LANES):
-                        matrix[a, b, j] += ez[j] * f + g + zz[j] * s1 * s2 * vv
+                    both = s1 * s2 * vv
+                    for j in range(lanes):
+                        matrix[a, b, j] += ez[j] * f + g + zz[j] * both
 
 
 @compiled
@@ -154,11 +155,11 @@ def _join(action, cell, carry, matrix):
     The left node is (right + difference), so its form goes to three blocks. At the centre q
     vanishes: there the difference of the left node is minus the right node, not an unknown.
     """
-    dof = action.dof
+    dof, lanes = action.dof, matrix.shape[2]
     inner = dof * (action.value.shape[1] - 2)
     right = inner + dof
     if cell == 0:
-        for j in range(LANES):
+        for j in range(lanes):
             for a in range(dof):
                 for b in range(dof):
                     low, high = min(a, b), max(a, b)
@@ -173,7 +174,7 @@ def _join(action, cell, carry, matrix):
                     matrix[p, right + a, j] -= matrix[p, inner + a, j]
                     matrix[p, inner + a, j] = 0.0
         return inner
-    for j in range(LANES):
+    for j in range(lanes):
         for a in range(dof):
             for b in range(dof):
                 low, high = min(a, b), max(a, b)
@@ -189,44 +190,45 @@ def _join(action, cell, carry, matrix):
 
 @compiled
 def count_negative(action, lam, negative):
-    """Number of negative eigenvalues of the action at each of `LANES` values of lam.
+    """Number of negative eigenvalues of the action at each of several values of lam.
 
     Parameters
     ----------
     action : `Action`
-    lam : (LANES,) trial values of sigma2, not zero unless the motion is radial
-    negative : (LANES,) int64, receives the counts
+    lam : (lanes,) trial values of sigma2, not zero unless the motion is radial
+    negative : (lanes,) int64, receives the counts
     """
-    dof = action.dof
+    dof, lanes = action.dof, lam.size
     stages, nodes = action.value.shape
     size = dof * nodes
     inner = dof * (nodes - 2)
     right = inner + dof
-    matrix = np.empty((size, size, LANES))
-    carry = np.zeros((dof, dof, LANES))
-    mu, inverse, factor = np.empty(LANES), np.empty(LANES), np.empty(LANES)
-    for j in range(LANES):
+    matrix = np.empty((size, size, lanes))
+    carry = np.zeros((dof, dof, lanes))
+    scratch = np.empty((4, lanes))
+    mu, inverse, factor = np.empty(lanes), np.empty(lanes), np.empty(lanes)
+    for j in range(lanes):
         negative[j] = 0
         mu[j] = 1.0 / lam[j] if action.ll > 0.0 else 0.0
     for cell in range(action.width.size):
-        _assemble(action, cell, lam, mu, matrix, negative)
+        _assemble(action, cell, lam, mu, scratch, matrix, negative)
         last = _join(action, cell, carry, matrix)
         for p in range(last):
-            for j in range(LANES):
+            for j in range(lanes):
                 inverse[j] = 1.0 / matrix[p, p, j]
                 if inverse[j] < 0.0:
                     negative[j] += 1
             for a in range(p + 1, size):
-                for j in range(LANES):
+                for j in range(lanes):
                     factor[j] = matrix[p, a, j] * inverse[j]
                 for b in range(a, size):
-                    for j in range(LANES):
+                    for j in range(lanes):
                         matrix[a, b, j] -= factor[j] * matrix[p, b, j]
         for a in range(dof):
             for b in range(a, dof):
-                for j in range(LANES):
+                for j in range(lanes):
                     carry[a, b, j] = matrix[right + a, right + b, j]
-    for j in range(LANES):
+    for j in range(lanes):
         k11, k12, k22, _, _, _, hidden = surface_term(action.top, lam[j], mu[j])
         negative[j] += hidden
         first = carry[0, 0, j] + k11

@@ -162,7 +162,7 @@ def test_counts_are_those_of_the_dense_matrix(
     _, action = make_action(star_of(surface, coarse_n3, stump), degree, gravity, surface, stages)
     dense = Dense(action, stages)
     limit = 0.9 * _cutoff(surface, degree, stump)
-    trials = TRIALS[TRIALS < limit]
+    trials = np.array([lam for lam in TRIALS if lam < limit])
     assert trials.size >= 4
     counts = count_at(action, trials)
     for lam, count in zip(trials, counts, strict=True):
@@ -208,7 +208,8 @@ def test_inverse_step_solves_the_dense_system(
 ):
     _, action = make_action(star_of(surface, coarse_n3, stump), degree, gravity, surface, stages)
     dense = Dense(action, stages)
-    work = Workspace(action)
+    lam = TRIALS[:3].repeat([3, 3, 2])
+    work = Workspace(action, lam.size)
     generator = np.random.default_rng(4)
     radial = np.linspace(0.0, 1.0, work.vector.shape[0])[:, None]
     work.vector[:] = radial * generator.uniform(0.5, 1.5, work.vector.shape)
@@ -217,11 +218,10 @@ def test_inverse_step_solves_the_dense_system(
         # Of about even kinetic energy: y = rho r xi_h is minute where density is.
         scale = 0.1 / np.sqrt(action.point[:, :, 1, None])
         work.swing[:] = scale * generator.uniform(0.5, 1.5, work.swing.shape)
-    lam = TRIALS[:3].repeat([3, 3, 2])
-    before = np.vstack((work.vector, work.swing.reshape(-1, LANES)))
+    before = np.vstack((work.vector, work.swing.reshape(-1, lam.size)))
     work.iterate(action, lam)
-    after = np.vstack((work.vector, work.swing.reshape(-1, LANES)))
-    for j in range(LANES):
+    after = np.vstack((work.vector, work.swing.reshape(-1, lam.size)))
+    for j in range(lam.size):
         matrix, kinetic = dense.pencil(float(lam[j]))
         size = matrix.shape[0]
         right_side = kinetic @ before[action.dof :, j][:size]
