@@ -29,6 +29,12 @@ GAS_CONSTANT = 8.31446261815324e7
 #: Radiation density constant a, erg cm^-3 K^-4 (CODATA 2018).
 RADIATION_CONSTANT = 7.565733e-15
 
+#: Rest energy of the electron m c^2, erg (CODATA 2018).
+ELECTRON_REST_ENERGY = 8.1871057769e-7
+#: 8 pi (m c/h)^3, cm^-3: electrons of momentum below m c hold a third of it (CODATA 2018
+#: Compton wavelength, 2.42631023867e-10 cm).
+COMPTON_DENSITY = 8.0 * math.pi / 2.42631023867e-10**3
+
 #: Frequency units: factor from the unit to hertz.
 FREQUENCY_UNITS = {"uHz": 1e-6, "mHz": 1e-3, "c/d": 1.0 / 86400.0}
 #: Period units: factor from the unit to seconds.

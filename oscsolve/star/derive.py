@@ -116,6 +116,18 @@ def derive_a_star(
     return strength * (slope - 1.0 / gamma1), widened
 
 
+def slope_over(
+    pressure: np.ndarray, values: np.ndarray, jumps: np.ndarray, rounding: float
+) -> np.ndarray:
+    """(n,) d(values)/dlnP, differentiated as in `derive_a_star`, not across the (n-1,) `jumps`."""
+    lnp = np.log(pressure)
+    slope = np.zeros(pressure.size)
+    for block in np.split(np.arange(pressure.size), np.flatnonzero(jumps) + 1):
+        if block.size >= 2:
+            slope[block], _ = _slope(lnp[block], values[block], 1e3 * rounding)
+    return slope
+
+
 def _slope(x: np.ndarray, y: np.ndarray, least: float) -> tuple[np.ndarray, int]:
     """dy/dx at each point, and the number of points where `least` forced a wider fit."""
     if x.size == 2:

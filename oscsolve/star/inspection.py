@@ -207,8 +207,11 @@ def convective_zones(star: StarModel) -> tuple[tuple[float, float], ...]:
     r, x = star.radius[inside], star.fractional_radius[inside]
     v = star.gravitational_constant * star.mass[inside] * star.density[inside]
     excess = star.a_star[inside] * r * star.pressure[inside] / v
-    derived = any(finding.code == "a-star-derived" for finding in star.findings)
-    unstable = _without_short_runs(excess < (_UNSTABLE_DERIVED if derived else _UNSTABLE))
+    places = {finding.code: finding.place for finding in star.findings}
+    limit = np.full(x.size, _UNSTABLE_DERIVED if "a-star-derived" in places else _UNSTABLE)
+    # In degenerate matter A* is small and, taken from the temperature, does not scatter.
+    limit[x <= (places.get("a-star-thermal") or 0.0)] = _UNSTABLE
+    unstable = _without_short_runs(excess < limit)
     start = np.flatnonzero(np.diff(unstable.astype(np.int8), prepend=0) == 1)
     stop = np.flatnonzero(np.diff(unstable.astype(np.int8), append=0) == -1)
     border = np.concatenate(([0.0], 0.5 * (x[1:] + x[:-1]), x[-1:]))

@@ -150,9 +150,13 @@ def test_repeated_radii_are_rounding_not_jumps(stars):
 
 
 def test_missing_gamma1_is_a_doubt_with_its_size(stars):
-    for name in ("giants/red-giant-columns.txt", "dwarfs/main-sequence-columns.txt"):
+    for name, code in (
+        ("giants/red-giant-columns.txt", "gamma1-electron-gas"),
+        ("dwarfs/white-dwarf-columns.txt", "gamma1-electron-gas"),
+        ("dwarfs/main-sequence-columns.txt", "gamma1-ideal-gas"),
+    ):
         star = stars[name]
-        finding = next(f for f in star.findings if f.code == "gamma1-ideal-gas")
+        finding = next(f for f in star.findings if f.code == code)
         assert finding.severity == "doubt"
         assert "a-star-derived" in codes(star)
         assert np.all((star.gamma1 > 4 / 3) & (star.gamma1 < 5 / 3))

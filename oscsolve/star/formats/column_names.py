@@ -30,7 +30,7 @@ def _spell(names: str, unit: str = "", log10: bool = False) -> tuple[Spelling, .
     return tuple(Spelling(name, unit, log10) for name in names.split())
 
 
-#: Quantity (attribute of StarModel, or "metals") to accepted names, the best first.
+#: Quantity (attribute of StarModel, "metals" or "mean_charge") to accepted names, the best first.
 COLUMNS: dict[str, tuple[Spelling, ...]] = {
     "radius": (
         *_spell("radiuscm rcm", "cgs"),
@@ -65,6 +65,7 @@ COLUMNS: dict[str, tuple[Spelling, ...]] = {
     "hydrogen": _spell("xmassfractionh hydrogen x h1 xh xhydrogen"),
     "helium": _spell("ymassfractionhe helium y he4 yhe xhelium"),
     "metals": _spell("zmassfractionmetals metals z metallicity"),
+    "mean_charge": _spell("zbardivabar electronspernucleon"),
     "rotation": _spell("omega angularvelocity rotation"),
 }
 

@@ -21,7 +21,6 @@ from oscsolve.star.formats.points import (
     make_star,
     merge_repeated_radii,
     order_outward,
-    settle_a_star,
     settle_centre,
     settle_gravity,
 )
@@ -32,7 +31,7 @@ from oscsolve.star.formats.staggered import (
     to_centres,
 )
 from oscsolve.star.formats.table_text import TableText, find_table, split_row
-from oscsolve.star.gas import gamma1_gas_and_radiation, gas_pressure_fraction, ideal_pressure
+from oscsolve.star.formats.thermodynamics import settle_thermodynamics
 from oscsolve.star.model import StarModel
 
 #: Relative mismatch of rho dV and dm from which on the user should look at the file.
@@ -85,8 +84,7 @@ def read(path: Path, *, gravitational_constant: float | None = None) -> StarMode
         _settle_staggered(draft, gravitational_constant, stated)
     else:
         settle_gravity(draft, gravitational_constant, stated)
-    _settle_gamma1(draft)
-    _settle_buoyancy(draft, max(digits["pressure"], digits["density"]))
+    settle_thermodynamics(draft, max(digits["pressure"], digits["density"]))
     return make_star(draft, name=path.stem, source=where, source_hash=bytes_hash(data))
 
 
@@ -224,54 +222,3 @@ def _settle_staggered(draft: Draft, given: float | None, stated: float | None) -
         at_faces = buoyancy_at_faces(draft, gravity)
     to_centres(draft, at_faces)
     settle_gravity(draft, given, stated, implied)
-
-
-def _settle_gamma1(draft: Draft) -> None:
-    """Gamma1 of an ideal gas with radiation where the file has none."""
-    c = draft.columns
-    if "gamma1" in c:
-        return
-    if "temperature" not in c:
-        raise InputError(
-            f"{draft.where}: no column of gamma1, and none of temperature to derive it from; "
-            "export gamma1"
-        )
-    beta = gas_pressure_fraction(c["pressure"], c["temperature"])
-    if np.any(beta < 0.0):
-        at = int(np.argmin(beta))
-        x = c["radius"][at] / draft.scalars["photospheric_radius"]
-        raise InputError(
-            f"{draft.where}: the radiation pressure of the temperature exceeds the pressure at "
-            f"point {at + 1} from the centre (x = {x:.6g}), so gamma1 cannot be derived; "
-            "export gamma1"
-        )
-    c["gamma1"] = gamma1_gas_and_radiation(beta)
-    tail, size = "", None
-    if "hydrogen" in c and "helium" in c:
-        ideal = ideal_pressure(c["density"], c["temperature"], c["hydrogen"], c["helium"])
-        off = np.abs(ideal / c["pressure"] - 1.0)
-        at, size = int(np.argmax(off)), float(off.max())
-        x = c["radius"][at] / draft.scalars["photospheric_radius"]
-        tail = (
-            f"; that gas has another pressure than the file, by {float(np.median(off)):.2g} "
-            f"(median) and at most {size:.2g} at x = {x:.4g}"
-        )
-    draft.note(
-        "doubt",
-        "gamma1-ideal-gas",
-        "the file has no Gamma1; that of a fully ionised monatomic gas with radiation was used, "
-        f"with P_rad = a T^4/3 and the P of the file{tail}",
-        "export Gamma1: ionisation zones are missing, which shifts p modes",
-        size=size,
-    )
-
-
-def _settle_buoyancy(draft: Draft, digits: float) -> None:
-    """One form of the buoyancy: A* of the file, else its N^2, else derived."""
-    c = draft.columns
-    if "a_star" in c:
-        c.pop("brunt_n2", None)
-        return
-    if "brunt_n2" in c:
-        return
-    settle_a_star(draft, digits, "no buoyancy")
