@@ -32,7 +32,7 @@ def energy_density(modes: ModeSet, index: int) -> np.ndarray:
         The list holds no eigenfunctions, or there is no such mode.
     """
     quadrature = Quadrature(modes)
-    at, mode = quadrature.points, modes.eigenfunction(index)
+    at, mode = quadrature.points, quadrature.motion_on_points(index)
     ll = quadrature.wave(index).ll
     density = at.rho * (mode.xi_r**2 + ll * mode.xi_h**2) * at.x**2
     return density / kinetic(quadrature, index)

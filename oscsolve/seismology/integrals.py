@@ -153,35 +153,36 @@ class Quadrature:
 
     def ends(self, index: int) -> tuple[tuple[Structure, Motion], tuple[Structure, Motion]]:
         """Structure and mode at the left and at the right ends of the model's intervals."""
-        columns = self._columns(index)
+        columns = self._with_centre(index)
         interval = self.profile.interval
         sides = (Motion(*(c[interval + k] for c in columns)) for k in (0, 1))
         left, right = zip(self._ends, sides, strict=True)
         return left, right
 
-    def _columns(self, index: int) -> list[np.ndarray]:
-        """xi_r, xi_h, p'/rho, Phi', dPhi'/dr on the points of the profile."""
-        mode = self.modes.eigenfunction(index)
-        rho = self.points.rho
-        eta = np.divide(mode.p_prime, rho, out=np.zeros_like(rho), where=rho > 0.0)
-        xi_h = self._horizontal(index, eta)
-        columns = [mode.xi_r, xi_h, eta, mode.phi_prime, mode.dphi_prime]
-        if self._offset:
-            degree = int(self.modes.degree[index])
-            columns = [
-                np.concatenate(([central_value(c, degree, k)], c)) for k, c in enumerate(columns)
-            ]
-        return columns
+    def motion_on_points(self, index: int) -> Motion:
+        """Mode `index` on the points of the model, (n,).
 
-    def _horizontal(self, index: int, eta: np.ndarray) -> np.ndarray:
-        """xi_h on the points; it jumps with the density, which the stored column leaves out."""
-        mode, wave = self.modes.eigenfunction(index), self.wave(index)
+        p'/rho is 0 at an edge. xi_h jumps with the density; the stored column holds its inner
+        value on both sides of a jump, and the outer one is made from p' and Phi' here.
+        """
+        mode, wave, rho = self.modes.eigenfunction(index), self.wave(index), self.points.rho
+        eta = np.divide(mode.p_prime, rho, out=np.zeros_like(rho), where=rho > 0.0)
+        xi_h = mode.xi_h
         outer = np.flatnonzero(np.diff(mode.radius) == 0.0) + 1
-        if wave.degree == 0 or outer.size == 0:
-            return mode.xi_h
-        xi_h = mode.xi_h.copy()
-        xi_h[outer] = (eta[outer] + mode.phi_prime[outer]) / (wave.lam * mode.radius[outer])
-        return xi_h
+        if wave.degree > 0 and outer.size:
+            xi_h = xi_h.copy()
+            xi_h[outer] = (eta[outer] + mode.phi_prime[outer]) / (wave.lam * mode.radius[outer])
+        return Motion(mode.xi_r, xi_h, eta, mode.phi_prime, mode.dphi_prime)
+
+    def _with_centre(self, index: int) -> Motion:
+        """Mode `index` on the points of the profile."""
+        mode = self.motion_on_points(index)
+        if not self._offset:
+            return mode
+        degree = int(self.modes.degree[index])
+        return Motion(
+            *(np.append(central_value(c, degree, part), c) for part, c in enumerate(mode))
+        )
 
 
 def _cut(
