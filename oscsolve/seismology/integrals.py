@@ -20,8 +20,18 @@ from oscsolve.seismology.motion import PLACE, Motion, Wave, central_value, piece
 from oscsolve.star.model import StarModel
 from oscsolve.star.profile import Profile, Structure
 
+
+def _partial_weights(size: int) -> np.ndarray:
+    point = 0.5 * (np.polynomial.legendre.leggauss(size)[0] + 1.0)
+    power = np.arange(size)
+    integrals = point[:, None] ** (power + 1) / (power + 1)
+    return np.linalg.solve((point[:, None] ** power).T, integrals.T).T
+
+
 #: Gauss points per cell: with five, squares of quintics are off by less than the quintics are.
 _NODES = 5
+#: Integrals over [0, 1] from 0 to each Gauss point of the polynomial through all of them.
+_PARTIAL = _partial_weights(_NODES)
 
 
 @dataclass(frozen=True, eq=False)
@@ -132,6 +142,12 @@ class Quadrature:
     def cumulative(self, f: np.ndarray) -> np.ndarray:
         """(cells + 1,) integral from the centre to the ends of the cells."""
         return np.concatenate(([0.0], np.cumsum(np.sum(f * self.weight, axis=1))))
+
+    def running(self, f: np.ndarray) -> np.ndarray:
+        """(cells, k) integral from the centre to the Gauss points themselves."""
+        before = self.cumulative(f)[:-1]
+        width = np.diff(self.edges)[:, None]
+        return before[:, None] + width * (f @ _PARTIAL.T)
 
     def on_points(self, ends: np.ndarray) -> np.ndarray:
         """Values at the ends of cells, carried to the points of the model, (n,).
