@@ -24,6 +24,13 @@ _UNSTABLE, _UNSTABLE_DERIVED = -1e-12, 1e-3
 #: Runs of fewer points than this do not make a zone, nor part one.
 _SHORT = 3
 
+_BROKEN = Finding(
+    "defect",
+    "structure-broken",
+    "the columns contradict each other so much that between points the sound speed is not real",
+    "repair the columns named in the other findings",
+)
+
 
 @dataclass(frozen=True)
 class Figures:
@@ -38,7 +45,7 @@ class Figures:
         the last
     central_density_ratio : density of the centre over the mean density 3 M/(4 pi R^3)
     nu_dynamical : sqrt(G M/R^3)/2 pi, uHz
-    large_separation : [2 int dr/c]^-1, uHz
+    large_separation : [2 int dr/c]^-1, uHz; NaN in a broken model
     period_spacing : (degree, 2 pi^2/(sqrt(l(l+1)) int N dr/r) in s) for l = 1, 2, 3; infinite
         without stable layers
     acoustic_cutoff : c/(4 pi H) of the outermost layer, uHz; infinite at a true edge
@@ -134,19 +141,26 @@ def inspect_model(
     for degree in degrees:
         if int(degree) != degree or degree < 0:
             raise InputError(f"degrees are whole numbers from 0; got {degree!r}")
+    asked = None if band is None else band_to_uhz(band, unit, star.nu_dynamical)
+    # A broken model must end in findings, not in warnings of the arithmetic.
+    with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
+        return _inspect(star, degrees, asked)
+
+
+def _inspect(
+    star: StarModel, degrees: Sequence[int], asked: tuple[float, float] | None
+) -> Inspection:
     profile = Profile(star)
-    if band is None:
-        limits, why = likely_band(star, profile)
+    limits, why = likely_band(star, profile) if asked is None else (asked, "")
+    figures = model_figures(star, profile)
+    findings = [*star.findings, *structure_findings(star)]
+    if np.isfinite(figures.large_separation) and np.all(np.isfinite(limits)):
+        findings += band_findings(star, profile, degrees, limits)
     else:
-        limits, why = band_to_uhz(band, unit, star.nu_dynamical), ""
-    findings = [
-        *star.findings,
-        *structure_findings(star),
-        *band_findings(star, profile, degrees, limits),
-    ]
+        findings.append(_BROKEN)
     findings.sort(key=lambda found: -SEVERITIES.index(found.severity))
     fewest = points_per_wavelength(star, profile, degrees, limits)[0]
-    return Inspection(tuple(findings), model_figures(star, profile), limits, why, fewest)
+    return Inspection(tuple(findings), figures, limits, why, fewest)
 
 
 def model_figures(star: StarModel, profile: Profile | None = None) -> Figures:

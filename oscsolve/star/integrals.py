@@ -20,6 +20,8 @@ _NEUTRAL = 1e-13
 def acoustic_radius(profile: Profile) -> float:
     """Time that sound takes from the centre to the outermost point, sqrt(R^3/(G M)).
 
+    NaN if the columns contradict each other so much that no sound speed lies between two points.
+
     Notes
     -----
     int dr/c. Where pressure vanishes at the outermost point, c^2 falls linearly towards it, and
@@ -94,7 +96,8 @@ def _integral(profile: Profile, integrand: Callable[[Structure], np.ndarray]) ->
     left, h = profile.x[profile.interval], np.diff(profile.x)[profile.interval]
     x = left + 0.5 * (1.0 + points)[:, None] * h
     at = profile.at(x, np.broadcast_to(profile.interval, x.shape))
-    return float(np.sum(0.5 * weights[:, None] * h * integrand(at)))
+    with np.errstate(invalid="ignore", divide="ignore"):
+        return float(np.sum(0.5 * weights[:, None] * h * integrand(at)))
 
 
 def _before_edge(profile: Profile) -> tuple[Structure, float]:
