@@ -19,6 +19,7 @@ both vanish as smooth as any other place. beta and Gamma1 get slopes that do not
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from scipy.interpolate import Akima1DInterpolator
@@ -51,6 +52,29 @@ class Structure:
     n2: np.ndarray
     gamma1: np.ndarray
     w: np.ndarray
+
+
+class Polynomials(NamedTuple):
+    """The interpolants of a profile, interval by interval, in powers of t = (x - left)/width.
+
+    Attributes
+    ----------
+    left, right, width : (i,) ends and lengths of the intervals
+    q, w : (i, 6) m/x^3 and P/rho
+    residue : (i, 6) ln rho - exponent ln w
+    exponent : (i,) mean polytropic index
+    beta, gamma1 : (i, 4) dln rho/dln P and Gamma1
+    """
+
+    left: np.ndarray
+    right: np.ndarray
+    width: np.ndarray
+    q: np.ndarray
+    w: np.ndarray
+    residue: np.ndarray
+    exponent: np.ndarray
+    beta: np.ndarray
+    gamma1: np.ndarray
 
 
 class Profile:
@@ -127,6 +151,13 @@ class Profile:
     def _density(
         self, i: np.ndarray, j: np.ndarray, h: np.ndarray, w: np.ndarray, quintic: tuple
     ) -> np.ndarray:
+        index, values = self._density_ends(i, j, h)
+        return np.exp(sum(b * v for b, v in zip(quintic, values, strict=True))) * w**index
+
+    def _density_ends(
+        self, i: np.ndarray, j: np.ndarray, h: np.ndarray
+    ) -> tuple[np.ndarray, tuple[np.ndarray, ...]]:
+        """Polytropic index, and ln rho - index ln w with its scaled slopes at the two ends."""
         lnw_step = np.log(self._w[j] / self._w[i])
         lnrho_step = np.log(self._rho[j] / self._rho[i])
         index = np.divide(lnrho_step, lnw_step, out=np.zeros_like(h), where=np.abs(lnw_step) > 1e-3)
@@ -142,8 +173,33 @@ class Profile:
                 )
             )
         left, right = ends
-        values = (left[0], right[0], left[1], right[1], left[2], right[2])
-        return np.exp(sum(b * v for b, v in zip(quintic, values, strict=True))) * w**index
+        return index, (left[0], right[0], left[1], right[1], left[2], right[2])
+
+    def polynomials(self) -> Polynomials:
+        """The same interpolants as coefficients, for code that evaluates them one by one."""
+        i = self.interval
+        j = i + 1
+        h = self.x[j] - self.x[i]
+        index, residue = self._density_ends(i, j, h)
+
+        def smooth(f: np.ndarray, f1: np.ndarray, f2: np.ndarray) -> np.ndarray:
+            ends = (f[i], f[j], f1[i] * h, f1[j] * h, f2[i] * h * h, f2[j] * h * h)
+            return _quintic_powers(*ends)
+
+        def cubic(f: np.ndarray, f1: np.ndarray) -> np.ndarray:
+            return _cubic_powers(f[i], f[j], f1[i] * h, f1[j] * h)
+
+        return Polynomials(
+            left=self.x[i],
+            right=self.x[j],
+            width=h,
+            q=smooth(self._q, self._q1, self._q2),
+            w=smooth(self._w, self._w1, self._w2),
+            residue=_quintic_powers(*residue),
+            exponent=index,
+            beta=cubic(self._beta, self._beta1),
+            gamma1=cubic(self._gamma1, self._gamma1_1),
+        )
 
     def outermost(self) -> tuple[float, int]:
         """The outermost radius that carries matter, and the interval that ends there."""
@@ -233,4 +289,28 @@ def _hermite_quintic(t: np.ndarray) -> tuple[np.ndarray, ...]:
         -t3 * u * (1.0 + 3.0 * u),
         0.5 * u3 * t * t,
         0.5 * t3 * u * u,
+    )
+
+
+def _cubic_powers(f0: np.ndarray, f1: np.ndarray, a: np.ndarray, b: np.ndarray) -> np.ndarray:
+    """(..., 4) coefficients of 1, t, t^2, t^3 from the ends and the scaled slopes a, b there."""
+    step = f1 - f0
+    return np.stack((f0, a, 3.0 * step - 2.0 * a - b, a + b - 2.0 * step), axis=-1)
+
+
+def _quintic_powers(
+    f0: np.ndarray, f1: np.ndarray, a: np.ndarray, b: np.ndarray, c: np.ndarray, d: np.ndarray
+) -> np.ndarray:
+    """(..., 6) likewise, with scaled second derivatives c, d."""
+    step = f1 - f0
+    return np.stack(
+        (
+            f0,
+            a,
+            0.5 * c,
+            10.0 * step - 6.0 * a - 4.0 * b - 1.5 * c + 0.5 * d,
+            -15.0 * step + 8.0 * a + 7.0 * b + 1.5 * c - d,
+            6.0 * step - 3.0 * (a + b) - 0.5 * (c - d),
+        ),
+        axis=-1,
     )
