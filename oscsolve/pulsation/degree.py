@@ -198,8 +198,9 @@ def _error_estimate(ladder: list[_Order]) -> np.ndarray:
 
     With d1 and d2 the changes from the first to the second and the second to the third order,
     errors fall about geometrically and d2 * (d2/d1) estimates what is left; the ratio is
-    enlarged by 6 and kept between 0.05 and 1. Modes that a lower order does not hold get the
-    change they do have. Round-off is added: a floor, or what the last polishing step shows.
+    enlarged by 6 and kept between 0.06 and 1. Modes that a lower order does not hold get the
+    change they do have, and lucky dips are filled. Round-off is added: a floor, or what the last
+    polishing step shows.
     """
     top = ladder[2]
     lam = top.solution.lam
@@ -208,11 +209,22 @@ def _error_estimate(ladder: list[_Order]) -> np.ndarray:
     d1, d2 = (_change(ladder[k], ladder[k + 1]) for k in (0, 1))
     d1 = _follow(ladder[1], top, d1)
     missing = np.isnan(d1) | (d1 == 0.0)
-    ratio = np.clip(6.0 * np.divide(d2, d1, out=np.ones_like(d2), where=~missing), 0.05, 1.0)
+    ratio = np.clip(6.0 * np.divide(d2, d1, out=np.ones_like(d2), where=~missing), 0.06, 1.0)
     unknown = np.isnan(d2)
     worst = np.nanmax(d2 / np.abs(lam)) if not np.all(unknown) else np.inf
     d2 = np.where(unknown, worst * np.abs(lam), d2)
-    return d2 * np.where(unknown, 1.0, ratio) + _rounding(top.solution)
+    left = d2 * np.where(unknown, 1.0, ratio) / np.maximum(np.abs(lam), 1e-300)
+    return _without_lucky_dips(left) * np.abs(lam) + _rounding(top.solution)
+
+
+def _without_lucky_dips(values: np.ndarray) -> np.ndarray:
+    """The largest of each value and its two neighbours on either side.
+
+    The change of a mode can vanish by chance on its way through zero, its error does not; modes
+    beside it are of a like kind and do not share the chance.
+    """
+    padded = np.pad(values, 2, mode="edge")
+    return np.max([padded[k : k + values.size] for k in range(5)], axis=0)
 
 
 def _rounding(solution: Solution) -> np.ndarray:

@@ -255,17 +255,20 @@ def _iterate(
     lam, last = guess[modes], np.full(modes.size, np.inf)
     for _ in range(_MOST_STEPS):
         work.iterate(action, lam)
-        scale = np.maximum(np.abs(lam), 1e-300)
+        # Beside a neutral mode, lam = 0, only the terms that cancel there give a scale.
+        scale = np.maximum(np.abs(lam), work.noise)
         step, new = np.abs(work.step) / scale, lam + work.step
         slack = scale * np.maximum(10.0 * _SETTLED, 3.0 * np.where(step < _STALLED, step, 0.0))
+        slack = np.maximum(slack, 3.0 * work.noise)
         outside = (new < low - slack) | (new > high + slack) | ~np.isfinite(new)
-        stalled = (step < _STALLED) & (step > 0.1 * last)
+        stalled = (step < _STALLED) & (step > 0.5 * last)
         to_come = step * np.minimum(1.0, np.abs(work.step) / gap)
         done = ~outside & ((to_come <= _SETTLED) | stalled)
         if np.any(done):
             here = modes[done]
             out.lam[here] = new[done]
-            out.noise[here] = np.maximum(work.noise / scale, np.where(stalled, step, 0.0))[done]
+            rounding = np.where(stalled, np.abs(work.step), 0.0)
+            out.noise[here] = np.maximum(work.noise, rounding)[done]
             out.vector[here] = work.vector[:, done].T
             out.swing[here] = np.moveaxis(work.swing[:, :, done], -1, 0)
             if np.all(done):
