@@ -16,6 +16,8 @@ from oscsolve.star.model import StarModel
 
 #: Groups of cells into which the fall of ln P, and the mass, are cut.
 _GROUPS = 60
+#: Expected fall of ln P in one cell from which the cell is left out.
+_COARSE = 1.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -24,7 +26,8 @@ class Balance:
 
     Attributes
     ----------
-    x : (k,) fractional radius in the middle of the groups of equal fall of ln P
+    x : (k,) fractional radius in the middle of the groups of equal fall of ln P; cells in which
+        ln P falls by 1 or more are in none
     hydrostatic : (k,) fall of ln P over that of G m rho / (r P) dln r, less 1
     density : (k,) fall of ln rho less that of (A* + V/Gamma1) dln r, over the fall of ln P
     mass_x : (j,) fractional radius in the middle of the groups of equal mass
@@ -52,14 +55,21 @@ def measure_balance(star: StarModel, mass: np.ndarray | None = None) -> Balance:
     r, m, p, d = (column[use] for column in columns)
     a_star, gamma1 = star.a_star[use], star.gamma1[use]
     v = star.gravitational_constant * m * d / (r * p)
-    real = np.diff(r) > 0.0
+    step = np.diff(r) / r[:-1]
+    # Cells in which P must fall by e or more (towards a true edge) are too coarse to judge.
+    real = (step > 0.0) & (np.maximum(v[1:], v[:-1]) * step < _COARSE)
     lnp, lnd = np.log(p), np.log(d)
     fall = np.where(real, -np.diff(lnp), 0.0)
     thinning = np.where(real, -np.diff(lnd), 0.0)
     edges = _equal_parts(fall)
     load, expected, found, thinned = (
         _group(cells, edges)
-        for cells in (_cells(r, v), _cells(r, v / gamma1 + a_star), fall, thinning)
+        for cells in (
+            _cells(r, v, real),
+            _cells(r, v / gamma1 + a_star, real),
+            fall,
+            thinning,
+        )
     )
     x = r / star.photospheric_radius
     shells = shell_masses(r, d)
@@ -88,10 +98,10 @@ def mass_of_density(star: StarModel) -> np.ndarray:
     return inner + np.concatenate(([0.0], np.cumsum(shell_masses(star.radius, star.density))))
 
 
-def _cells(r: np.ndarray, f: np.ndarray) -> np.ndarray:
-    """(n-1,) integrals of f dln r between the points, by a spline that ends at density jumps."""
+def _cells(r: np.ndarray, f: np.ndarray, real: np.ndarray) -> np.ndarray:
+    """(n-1,) integrals of f dln r between the points, by splines over runs of `real` cells."""
     out = np.zeros(r.size - 1)
-    breaks = np.flatnonzero(np.diff(r) <= 0.0) + 1
+    breaks = np.flatnonzero(~real) + 1
     for part in np.split(np.arange(r.size), breaks):
         # Against r, not ln r: near the centre f/r is linear in r, and steps in ln r are large.
         at, slope = r[part], f[part] / r[part]

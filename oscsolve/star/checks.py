@@ -148,7 +148,7 @@ def _mass(star: StarModel, balance: Balance) -> Iterator[Finding]:
     off = np.abs(ratio / factor - 1.0) if factor != 0.0 else np.abs(ratio)
     spread = float(np.median(off))
     size = max(abs(factor - 1.0), spread)
-    if size <= _MASS[0]:
+    if size <= _MASS[0] + _coarseness(star):
         return
     severity = "defect" if size > _MASS[1] else "doubt"
     meaning = _meaning_of_mass(star)
@@ -170,6 +170,14 @@ def _mass(star: StarModel, balance: Balance) -> Iterator[Finding]:
         place,
         size,
     )
+
+
+def _coarseness(star: StarModel) -> float:
+    """Relative error that the integral of the density may have: twice that of second order."""
+    fine, coarse = (
+        float(np.sum(shell_masses(star.radius[::k], star.density[::k]))) for k in (1, 2)
+    )
+    return 2.0 / 3.0 * abs(coarse / fine - 1.0)
 
 
 def _meaning_of_mass(star: StarModel) -> str:
@@ -275,7 +283,7 @@ def _buoyancy(star: StarModel, balance: Balance, told: set[str]) -> Iterator[Fin
     residual = np.abs(balance.density)
     inside = balance.x < _INTERIOR
     if "a-star-derived" not in told and inside.any() and np.all(np.isfinite(residual)):
-        middle = float(np.median(residual))
+        middle = float(np.median(residual[inside]))
         masked = np.where(inside, residual, 0.0)
         worst = int(np.argmax(masked))
         size = float(masked[worst])

@@ -342,3 +342,13 @@ def test_wrong_arguments_are_refused(star):
         inspect_model(star, band=(4000, 1000))
     with pytest.raises(oscsolve.InputError, match="unit"):
         inspect_model(star, band=(1, 2), unit="furlong")
+
+
+@pytest.mark.parametrize("index", [1.5, 3, 4])
+@pytest.mark.parametrize("keep_every", [4, 16])
+def test_a_coarse_mesh_is_not_mistaken_for_wrong_columns(index, keep_every):
+    star = oscsolve.polytrope(index)
+    kept = np.unique(np.append(np.arange(0, star.radius.size, keep_every), star.radius.size - 1))
+    names = ("radius", "mass", "pressure", "density", "gamma1", "a_star")
+    coarse = star.with_changes(**{name: getattr(star, name)[kept] for name in names})
+    assert codes(coarse) <= {"mesh-coarse"}

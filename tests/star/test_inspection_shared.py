@@ -130,3 +130,14 @@ def test_white_dwarf_core_is_stable_by_its_temperature(inspected):
     excess = (star.a_star / v)[core]
     # Isothermal: A*/V = chi_T nabla_ad/chi_rho, chi_T = P_ion/P nearly; 1e-5 for eta of 5000.
     assert np.all((excess > 1e-6) & (excess < 1e-4))
+
+
+@pytest.mark.parametrize("name", PREDICTED)
+@pytest.mark.parametrize("ending", ["fgong", "h5"])
+def test_writing_a_model_and_reading_it_raises_no_new_alarm(inspected, tmp_path, name, ending):
+    star, inspection = inspected[name]
+    path = tmp_path / f"copy.{ending}"
+    oscsolve.write_model(star, path)
+    again = inspect_model(oscsolve.read_model(path))
+    alarms = {f.code for f in again if f.severity != "note"}
+    assert alarms <= {f.code for f in inspection if f.severity != "note"}
