@@ -22,9 +22,9 @@ The coefficients, in the order of `FIELDS`:
     Eulerian:    c11 = g/c^2   s1 = 0           d0 = rho N^2/r^2 - 4 pi rho^2/r^2
     Lagrangian:  c11 = 0       s1 = rho g/r^2   d0 = -4 rho g/r^3
 
-The Cowling approximation has neither q2 nor p2 and leaves out the term -4 pi rho^2/r^2 of d0,
-which the Lagrangian form then gains with the other sign. Radial motion in full gravity is the
-Lagrangian form with L2 = 0: Phi' decouples exactly (no N^2 appears).
+The Cowling approximation has neither q2 nor p2, and c21 = 0. It leaves out the term
+-4 pi rho^2/r^2 of d0, which the Lagrangian form then gains with the other sign. Radial motion in
+full gravity is the Lagrangian form with L2 = 0: Phi' decouples exactly (no N^2 appears).
 """
 
 from __future__ import annotations
@@ -71,7 +71,7 @@ def coefficients(
     out[..., 3] = rho if degrees_of_freedom(degree, gravity) == 2 else 0.0
     out[..., 4] = -4.0 * np.pi / r**2
     out[..., 5] = np.where(lagrangian, 0.0, g / at.c2)
-    out[..., 6] = -4.0 * np.pi * rho / r**2
+    out[..., 6] = -4.0 * np.pi * rho / r**2 if full else 0.0
     out[..., 7] = np.where(lagrangian, lagrangian_d0, eulerian_d0)
     out[..., 8] = -rho / r**2
     out[..., 9] = ll / (4.0 * np.pi)
