@@ -167,7 +167,7 @@ def test_kelvin_mode_is_a_solid_harmonic():
         f = modes.eigenfunction(int(np.flatnonzero(modes.order == 0)[0]))
         total = np.sqrt(1.0 + (degree + 1) / degree)
         expected = f.radius ** (degree - 1) / total
-        # It is scaled at the last point inside the edge, 1e-9 R below it. Round-off of q1 = r^2 xi_r
+        # Scaled at the last point inside the edge, 1e-9 R below it; round-off of q1 = r^2 xi_r
         # of 1e-14 is what xi_r shows near the centre.
         inside = slice(1, -1)
         assert f.xi_r[inside] == pytest.approx(expected[inside], rel=1e-8, abs=1e-10)
