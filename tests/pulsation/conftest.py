@@ -29,8 +29,8 @@ def thinned() -> Callable[[StarModel, int], StarModel]:
 
 @pytest.fixture(scope="session")
 def coarse_n3() -> StarModel:
-    """Polytrope of index 3 with about 30 points: a mesh small enough for dense matrices."""
-    return _thinned(polytrope(3), 32)
+    """Polytrope of index 3 with 20 points: a mesh small enough for dense matrices."""
+    return _thinned(polytrope(3), 48)
 
 
 @pytest.fixture(scope="session")
