@@ -6,7 +6,7 @@ import csv
 import io
 import json
 import math
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import asdict
 from pathlib import Path
 
@@ -30,7 +30,8 @@ COLUMNS = {
     "inertia": "1",
 }
 _CENSUS = ("degree", "low", "high", "counted", "listed", "relabelled")
-_STAR = {
+#: What documents tell of the star: attribute to unit.
+STAR = {
     "name": "",
     "source": "",
     "source_hash": "",
@@ -41,34 +42,43 @@ _STAR = {
 }
 
 
-def json_document(modes: ModeSet) -> str:
-    """The list as one JSON document; what is not finite or not known is null."""
+def json_document(modes: ModeSet, checks: Mapping[str, object] | None = None) -> str:
+    """The list as one JSON document; what is not finite or not known is null.
+
+    Parameters
+    ----------
+    modes : the list
+    checks : outcome of checks that were asked for, under the name ``checks``
+    """
     census = modes.census
-    document = {
+    document: dict[str, object] = {
         "program": f"oscsolve {modes.program_version}",
         "complete": modes.complete,
-        "star": {name: getattr(modes.star, name) for name in _STAR},
+        "star": {name: getattr(modes.star, name) for name in STAR},
         "options": dict(modes.options),
-        "units": {"modes": COLUMNS, "census": {"low": "uHz", "high": "uHz"}, "star": _STAR},
-        "census": _rows({name: getattr(census, name) for name in _CENSUS}),
-        "modes": _rows(
+        "units": {"modes": COLUMNS, "census": {"low": "uHz", "high": "uHz"}, "star": STAR},
+        "census": rows_of({name: getattr(census, name) for name in _CENSUS}),
+        "modes": rows_of(
             {name: getattr(modes, name) for name in (*COLUMNS, "relabelled")},
         ),
         "findings": [asdict(found) for found in (*modes.star.findings, *modes.findings)],
     }
+    if checks is not None:
+        document["checks"] = checks
     return json.dumps(plain(document), allow_nan=False, ensure_ascii=False, indent=1)
 
 
-def csv_lines(modes: ModeSet) -> Iterator[str]:
+def csv_lines(modes: ModeSet, remarks: Iterable[str] = ()) -> Iterator[str]:
     """The list as CSV: comments behind ``#``, a line of names, one line a mode, all digits."""
     yield f"# oscsolve {modes.program_version}: oscillation modes"
     yield from star_lines(modes.star)
     for name, value in modes.options.items():
         yield f"# option {name} = {value}"
     yield f"# {verdict_sentence(modes)}"
+    yield from remarks
     yield "# nu and nu_error in uHz, period in s"
     yield ",".join(COLUMNS)
-    for row in _rows({name: getattr(modes, name) for name in COLUMNS}):
+    for row in rows_of({name: getattr(modes, name) for name in COLUMNS}):
         line = io.StringIO()
         csv.writer(line, lineterminator="").writerow(row.values())
         yield line.getvalue()
@@ -83,7 +93,8 @@ def write_text(path: Path, lines: Iterable[str], *, overwrite: bool) -> None:
         stream.writelines(f"{line}\n" for line in lines)
 
 
-def _rows(columns: dict[str, np.ndarray]) -> list[dict[str, object]]:
+def rows_of(columns: dict[str, np.ndarray]) -> list[dict[str, object]]:
+    """Columns of one length as one dictionary a row, of plain Python values."""
     lists = [column.tolist() for column in columns.values()]
     return [dict(zip(columns, row, strict=True)) for row in zip(*lists, strict=True)]
 

@@ -19,6 +19,7 @@ from oscsolve.version import __version__
 COMMANDS = {
     "modes": ("modes", "List the modes of one star, with a proof that none is missing."),
     "inspect": ("inspect", "Tell what a model holds and what is wrong or doubtful about it."),
+    "split": ("split", "Split modes by slow rotation, and turn splittings into rotation."),
     "build": ("build", "Make an analytic star and write it as a model file."),
 }
 

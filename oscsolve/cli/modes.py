@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import chain
 from pathlib import Path
 from typing import Any
 
@@ -38,12 +39,19 @@ from oscsolve.cli.progress import Progress, show_findings
 @click.option(
     "--json", "as_json", is_flag=True, help="Print one JSON document in place of the table."
 )
+@click.option(
+    "--check",
+    is_flag=True,
+    help="Recompute every frequency from the eigenfunctions through the energy integral, and take "
+    "the overlaps of all modes of one degree; two lines tell the worst.",
+)
 @overwrite_option
 def command(
     model: Path,
     out: Path | None,
     csv_path: Path | None,
     as_json: bool,
+    check: bool,
     overwrite: bool,
     **asked: Any,
 ) -> int:
@@ -60,19 +68,22 @@ def command(
         raise click.UsageError("--json and --csv - both want standard output; give --csv a file")
     _check_outputs(model, out, None if to_stdout else csv_path, overwrite)
     # Loaded here so that --help does not wait for numpy and h5py.
+    from oscsolve.cli.check_text import check_results
     from oscsolve.cli.documents import csv_lines, json_document, write_text
     from oscsolve.cli.table import mode_table
 
-    modes = _solve(model, keep_eigenfunctions=out is not None, **asked)
+    modes = _solve(model, keep_eigenfunctions=out is not None or check, **asked)
+    lines, values = check_results(modes) if check else ([], None)
     # Files first: whoever reads standard output may stop reading.
     if out is not None:
         oscsolve.save_modes(modes, out, overwrite=overwrite)
     if csv_path is not None and not to_stdout:
-        write_text(csv_path, csv_lines(modes), overwrite=overwrite)
+        write_text(csv_path, csv_lines(modes, lines), overwrite=overwrite)
     if as_json:
-        click.echo(json_document(modes))
+        click.echo(json_document(modes, values))
     else:
-        for line in csv_lines(modes) if to_stdout else mode_table(modes):
+        table = csv_lines(modes, lines) if to_stdout else chain(mode_table(modes), lines)
+        for line in table:
             click.echo(line)
     return 0 if modes.complete else 1
 

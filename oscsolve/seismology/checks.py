@@ -29,12 +29,16 @@ from dataclasses import dataclass
 import numpy as np
 
 from oscsolve.pulsation.modeset import ModeSet
+from oscsolve.seismology.energy import kinetic
 from oscsolve.seismology.integrals import Quadrature
 from oscsolve.seismology.motion import Motion, Wave
+from oscsolve.star.findings import Finding
 from oscsolve.star.profile import Structure
 
 #: Numbers held at a time when overlaps are computed: modes of one block times Gauss points.
 _BLOCK = 8_000_000
+#: Relative error of an inertia above which `coarse_points` speaks.
+_COARSE = 1e-3
 
 
 @dataclass(frozen=True, eq=False)
@@ -126,6 +130,42 @@ def orthogonality(modes: ModeSet) -> Orthogonality:
                 overlap[here[better]], partner[here[better]] = value[better], there[best[better]]
     worst = int(np.argmax(overlap)) if len(modes) else None
     return Orthogonality(overlap, partner, worst)
+
+
+def coarse_points(modes: ModeSet) -> tuple[Finding, ...]:
+    """A doubt where the points of the model are too few for its modes; empty where they suffice.
+
+    Integrals over a star read eigenfunctions on the points of the model. Where the inertia that
+    these give is not the listed one, from the finer mesh of the solver, nor will anything else be.
+
+    Raises
+    ------
+    InputError
+        The list holds no eigenfunctions.
+    """
+    quadrature = Quadrature(modes)
+    off = np.array(
+        [
+            abs(4.0 * np.pi * kinetic(quadrature, i) - inertia) / inertia
+            for i, inertia in enumerate(modes.inertia)
+        ]
+    )
+    late = int(np.sum(off > _COARSE))
+    if late == 0:
+        return ()
+    worst = int(np.argmax(off))
+    return (
+        Finding(
+            "doubt",
+            "coarse-points",
+            f"the {modes.star.radius.size} points of the model are too few for the eigenfunctions "
+            f"of {late} mode(s): the inertia of l = {modes.degree[worst]}, n = "
+            f"{modes.order[worst]} comes out {off[worst]:.1e} off",
+            "frequencies are not touched, but kernels and splittings are as far off; use a model "
+            "with more points where N is large",
+            size=float(off[worst]),
+        ),
+    )
 
 
 def _integral(quadrature: Quadrature, index: int) -> float:

@@ -92,7 +92,7 @@ class Rotation:
 
 def uniform_rotation(rate: float) -> Rotation:
     """Solid-body rotation at `rate` nHz."""
-    return Rotation([0.0], [rate], f"solid body, {rate:g} nHz")
+    return Rotation(np.zeros(1), np.array([rate]), f"solid body, {rate:g} nHz")
 
 
 def step_rotation(core: float, envelope: float, radius: float) -> Rotation:
@@ -106,7 +106,7 @@ def step_rotation(core: float, envelope: float, radius: float) -> Rotation:
     if not radius > 0.0:
         raise InputError(f"the step must lie above the centre; got x = {radius:g}")
     name = f"{core:g} nHz inside x = {radius:g}, {envelope:g} nHz outside"
-    return Rotation([radius, radius], [core, envelope], name)
+    return Rotation(np.array([radius, radius]), np.array([core, envelope]), name)
 
 
 def model_rotation(star: StarModel) -> Rotation:
