@@ -159,6 +159,7 @@ def _pass(p, k, t, direction, length, trial, accuracy, u, work):
         step = h * (6.0 if error < 1e-6 else min(6.0, max(0.2, 0.9 * error**-0.125)))
         if error <= 1.0:
             u[:] = work.new
+            _normalise(u)
             if h == rest:
                 return step * p.width[k]
             t += direction * h
@@ -193,7 +194,6 @@ def integrate(layers, trial, first, last, direction, t, accuracy, u, planes):
                 _cross(u, trial.form, layers.gravity[k + 1], layers.weight[k + 1])
         else:
             _cross(u, trial.form, 1.0 / layers.gravity[k], 1.0 / layers.weight[k])
-        _normalise(u)
         if direction < 0:
             planes[k - 1] = u
     return True
