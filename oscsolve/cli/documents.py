@@ -29,6 +29,8 @@ COLUMNS = {
     "period": "s",
     "inertia": "1",
 }
+#: Further columns of a list that carries a second opinion.
+_SECOND_OPINION = {"nu_second": "uHz", "nu_second_error": "uHz"}
 _CENSUS = ("degree", "low", "high", "counted", "listed", "relabelled")
 #: What documents tell of the star: attribute to unit.
 STAR = {
@@ -50,16 +52,16 @@ def json_document(modes: ModeSet, checks: Mapping[str, object] | None = None) ->
     modes : the list
     checks : outcome of checks that were asked for, under the name ``checks``
     """
-    census = modes.census
+    census, columns = modes.census, _columns(modes)
     document: dict[str, object] = {
         "program": f"oscsolve {modes.program_version}",
         "complete": modes.complete,
         "star": {name: getattr(modes.star, name) for name in STAR},
         "options": dict(modes.options),
-        "units": {"modes": COLUMNS, "census": {"low": "uHz", "high": "uHz"}, "star": STAR},
+        "units": {"modes": columns, "census": {"low": "uHz", "high": "uHz"}, "star": STAR},
         "census": rows_of({name: getattr(census, name) for name in _CENSUS}),
         "modes": rows_of(
-            {name: getattr(modes, name) for name in (*COLUMNS, "relabelled")},
+            {name: getattr(modes, name) for name in (*columns, "relabelled")},
         ),
         "findings": [asdict(found) for found in (*modes.star.findings, *modes.findings)],
     }
@@ -77,11 +79,16 @@ def csv_lines(modes: ModeSet, remarks: Iterable[str] = ()) -> Iterator[str]:
     yield f"# {verdict_sentence(modes)}"
     yield from remarks
     yield "# nu and nu_error in uHz, period in s"
-    yield ",".join(COLUMNS)
-    for row in rows_of({name: getattr(modes, name) for name in COLUMNS}):
+    columns = _columns(modes)
+    yield ",".join(columns)
+    for row in rows_of({name: getattr(modes, name) for name in columns}):
         line = io.StringIO()
         csv.writer(line, lineterminator="").writerow(row.values())
         yield line.getvalue()
+
+
+def _columns(modes: ModeSet) -> dict[str, str]:
+    return COLUMNS if modes.nu_second is None else {**COLUMNS, **_SECOND_OPINION}
 
 
 def write_text(path: Path, lines: Iterable[str], *, overwrite: bool) -> None:

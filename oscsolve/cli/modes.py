@@ -45,6 +45,12 @@ from oscsolve.cli.progress import Progress, show_findings
     help="Recompute every frequency from the eigenfunctions through the energy integral, and take "
     "the overlaps of all modes of one degree; two lines tell the worst.",
 )
+@click.option(
+    "--verify",
+    is_flag=True,
+    help="Recompute every mode by shooting, an independent method; exit status 1, the modes named, "
+    "where the two differ by more than their error bars allow.",
+)
 @overwrite_option
 def command(
     model: Path,
@@ -52,6 +58,7 @@ def command(
     csv_path: Path | None,
     as_json: bool,
     check: bool,
+    verify: bool,
     overwrite: bool,
     **asked: Any,
 ) -> int:
@@ -71,21 +78,27 @@ def command(
     from oscsolve.cli.check_text import check_results
     from oscsolve.cli.documents import csv_lines, json_document, write_text
     from oscsolve.cli.table import mode_table
+    from oscsolve.cli.verify_text import verify_results
 
-    modes = _solve(model, keep_eigenfunctions=out is not None or check, **asked)
-    lines, values = check_results(modes) if check else ([], None)
+    modes = _solve(model, keep_eigenfunctions=out is not None or check, verify=verify, **asked)
+    results = [check_results(modes)] if check else []
+    if verify:
+        results.append(verify_results(modes))
+    lines = [line for part, _ in results for line in part]
+    values = {name: value for _, part in results for name, value in part.items()}
     # Files first: whoever reads standard output may stop reading.
     if out is not None:
         oscsolve.save_modes(modes, out, overwrite=overwrite)
     if csv_path is not None and not to_stdout:
         write_text(csv_path, csv_lines(modes, lines), overwrite=overwrite)
     if as_json:
-        click.echo(json_document(modes, values))
+        click.echo(json_document(modes, values if results else None))
     else:
         table = csv_lines(modes, lines) if to_stdout else chain(mode_table(modes), lines)
         for line in table:
             click.echo(line)
-    return 0 if modes.complete else 1
+    agreed = modes.confirmed is None or bool(modes.confirmed.all())
+    return 0 if modes.complete and agreed else 1
 
 
 def _check_outputs(model: Path, out: Path | None, csv_path: Path | None, overwrite: bool) -> None:
@@ -107,6 +120,7 @@ def _solve(
     tolerance: float,
     gravitational_constant: float | None,
     keep_eigenfunctions: bool,
+    verify: bool,
 ) -> oscsolve.ModeSet:
     star = oscsolve.read_model(model, gravitational_constant=gravitational_constant)
     with Progress(announce=lambda: show_findings(star.findings)) as progress:
@@ -118,6 +132,7 @@ def _solve(
             gravity="cowling" if cowling else "full",
             surface=surface,
             tolerance=tolerance,
+            verify=verify,
             options=oscsolve.SolveOptions(eigenfunctions=keep_eigenfunctions),
             progress=progress,
         )

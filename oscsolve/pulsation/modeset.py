@@ -23,6 +23,26 @@ def _frozen(values: Any, dtype: Any) -> np.ndarray:
     return array
 
 
+def signed_square(nu: np.ndarray, error: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """nu^2 with the sign of nu, and its error.
+
+    The error of a frequency near zero is half the root of the error of its square; this undoes it.
+    """
+    return np.copysign(nu**2, nu), np.maximum(2.0 * np.abs(nu) * error, 4.0 * error**2)
+
+
+def agree(
+    nu: np.ndarray, error: np.ndarray, other: np.ndarray, other_error: np.ndarray
+) -> np.ndarray:
+    """(m,) bool, True where two frequencies differ by no more than their errors together.
+
+    Squares are compared, the eigenvalues, which remain meaningful where a mode is neutral.
+    """
+    square, tolerance = signed_square(nu, error)
+    other_square, other_tolerance = signed_square(other, other_error)
+    return np.abs(square - other_square) <= tolerance + other_tolerance
+
+
 @dataclass(frozen=True, eq=False)
 class Census:
     """How many modes each degree has in the band, by count and in the list.
@@ -122,6 +142,8 @@ class ModeSet:
     census : `Census`
     star : the model as used
     eigenfunctions : `Eigenfunctions` or None where they were not kept
+    nu_second, nu_second_error : (m,) uHz, the same modes recomputed by shooting, and the error
+        estimate of that; NaN where it found no such mode. None where no one asked
     options : everything that was asked for, name to plain value
     findings : what the run noticed (a band above the cut-off, an unstable star, ...)
     program_version : version of oscsolve that computed it
@@ -139,13 +161,20 @@ class ModeSet:
     census: Census
     star: StarModel
     eigenfunctions: Eigenfunctions | None = None
+    nu_second: np.ndarray | None = None
+    nu_second_error: np.ndarray | None = None
     options: Mapping[str, object] = field(default_factory=dict)
     findings: tuple[Finding, ...] = ()
     program_version: str = ""
 
     def __post_init__(self) -> None:
         kinds = {"degree": np.int64, "order": np.int64, "n_p": np.int64, "n_g": np.int64}
-        for name in ("degree", "order", "n_p", "n_g", "nu", "nu_error", "sigma2", "inertia"):
+        names = ["degree", "order", "n_p", "n_g", "nu", "nu_error", "sigma2", "inertia"]
+        if (self.nu_second is None) != (self.nu_second_error is None):
+            raise ValueError("nu_second and nu_second_error come together or not at all")
+        if self.nu_second is not None:
+            names += ["nu_second", "nu_second_error"]
+        for name in names:
             object.__setattr__(
                 self, name, _frozen(getattr(self, name), kinds.get(name, np.float64))
             )
@@ -168,6 +197,14 @@ class ModeSet:
     def relabelled(self) -> np.ndarray:
         """(m,) bool, True where the node counts do not give `order`."""
         return self.n_p - self.n_g != self.order
+
+    @property
+    def confirmed(self) -> np.ndarray | None:
+        """(m,) bool, True where the second opinion differs by no more than both error estimates
+        together; None where no one asked for it."""
+        if self.nu_second is None or self.nu_second_error is None:
+            return None
+        return agree(self.nu, self.nu_error, self.nu_second, self.nu_second_error)
 
     @property
     def complete(self) -> bool:

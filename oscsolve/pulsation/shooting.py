@@ -2,14 +2,13 @@
 
 Each listed mode is looked for anew with the equations of `oscsolve.pulsation.dziembowski`: regular
 solutions from the centre and solutions that meet the surface conditions are integrated towards
-each other, and the determinant of all of them, at one fitting point, vanishes at a mode. Only the
-planes that the solutions span matter, so that they may be made orthogonal on the way, and the
-determinant is divided by the areas that they span: it lies between -1 and 1.
+each other. At a mode they have one in common: the planes that they span meet at angle zero, where
+the determinant of all of them changes sign. Only these planes matter, so that solutions may be
+made orthogonal on the way. The root is sought in the sine of the smallest angle between them.
 
-The rate at which the determinant changes with the trial value is inverse to the squared amplitude
-of the mode, as a share of its energy, at the fitting point. One pair of full integrations thus
-shows where the mode lives, and the point of the model with most of its energy per ln r becomes the
-fitting point: elsewhere, deep in an evanescent zone, the determinant is a step and not a line.
+How fast that sine changes with the trial value is inverse to the share that the fitting point has
+in the energy of the mode. A pair of full integrations therefore shows where the mode lives: where
+the sine is smallest. Elsewhere, deep in an evanescent zone, it is a step and not a line.
 """
 
 from __future__ import annotations
@@ -17,7 +16,7 @@ from __future__ import annotations
 import os
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from scipy.optimize import brentq
@@ -30,7 +29,8 @@ from oscsolve.pulsation.dziembowski import (
     surface_plane,
 )
 from oscsolve.pulsation.integrator import Accuracy, integrate
-from oscsolve.pulsation.modeset import ModeSet
+from oscsolve.pulsation.modeset import ModeSet, agree, signed_square
+from oscsolve.star.findings import Finding
 from oscsolve.star.model import StarModel
 from oscsolve.star.profile import Profile
 
@@ -44,6 +44,8 @@ _CURVATURE = 1e-14
 ROUND_OFF = 1e-13
 #: Modes are looked for up to this relative distance, and not beyond the middle to a neighbour.
 _FARTHEST = 1e-2
+#: Modes that a finding names one by one.
+_MOST_NAMED = 10
 
 
 @dataclass(frozen=True, eq=False)
@@ -55,18 +57,15 @@ class SecondOpinion:
     nu : (m,) uHz; NaN where no mode was found near the listed one
     nu_error : (m,) uHz, numerical error estimate
     difference : (m,) uHz, `nu` minus the listed frequency
-    allowed : (m,) uHz, the largest difference that both error estimates, round-off included, allow
+    allowed : (m,) uHz, the sum of both error estimates, round-off included
+    agrees : (m,) bool, True where the squares of the frequencies differ by no more than allowed
     """
 
     nu: np.ndarray
     nu_error: np.ndarray
     difference: np.ndarray
     allowed: np.ndarray
-
-    @property
-    def agrees(self) -> np.ndarray:
-        """(m,) bool, True where the two solvers agree as closely as they claim."""
-        return np.abs(self.difference) <= self.allowed
+    agrees: np.ndarray
 
 
 def second_opinion(
@@ -109,11 +108,44 @@ def second_opinion(
         nu_error=nu_error,
         difference=nu - modes.nu,
         allowed=modes.nu_error + nu_error,
+        agrees=agree(modes.nu, modes.nu_error, nu, nu_error),
+    )
+
+
+def with_second_opinion(
+    modes: ModeSet, progress: Callable[[int, int, str], None] | None = None
+) -> ModeSet:
+    """The list with the columns of a second opinion, and a finding where they differ."""
+    second = second_opinion(modes.star, modes, progress)
+    findings = modes.findings
+    astray = np.flatnonzero(~second.agrees)
+    if astray.size:
+        findings = (*findings, _disagreement(modes, second, astray))
+    return replace(modes, nu_second=second.nu, nu_second_error=second.nu_error, findings=findings)
+
+
+def _disagreement(modes: ModeSet, second: SecondOpinion, astray: np.ndarray) -> Finding:
+    names = [f"l = {modes.degree[i]}, n = {modes.order[i]}" for i in astray[:_MOST_NAMED]]
+    if astray.size > _MOST_NAMED:
+        names.append(f"and {astray.size - _MOST_NAMED} more")
+    relative = np.abs(second.difference[astray] / modes.nu[astray])
+    size = float(np.max(relative)) if np.all(np.isfinite(relative)) else None
+    lost = int(np.sum(np.isnan(relative)))
+    how = f"by up to {np.nanmax(relative):.1e}" if lost < astray.size else ""
+    if lost:
+        how += f"{', ' if how else ''}{lost} not found"
+    return Finding(
+        "defect",
+        "second-opinion-differs",
+        f"the second opinion differs in {astray.size} of {len(modes)} modes by more than both "
+        f"error estimates allow ({how}): {'; '.join(names)}",
+        "do not use these frequencies; report the model and the options to the developers",
+        size=size,
     )
 
 
 class Matching:
-    """The normalised determinant of one degree as a function of lam, and its roots."""
+    """How badly the two sides of one degree match as a function of lam, and the roots of that."""
 
     def __init__(
         self, profile: Profile, layers: Layers, degree: int, cowling: bool, isothermal: bool
@@ -121,17 +153,14 @@ class Matching:
         self.layers, self.degree, self.cowling = layers, degree, cowling
         self.isothermal, self.has_edge = isothermal, profile.has_edge
         self.last = layers.polynomials.left.size - 1
-        right = layers.polynomials.right
-        rho = profile.at(right, profile.interval).rho
-        # Energy per ln r of a mode is this times |u|^2, u as in `dziembowski`.
-        self.log_weight = np.log(rho) + (2 * degree + 1 if degree > 0 else 5) * np.log(right)
 
     def at(self, lam: float, accuracy: Accuracy, point: int | None = None) -> np.ndarray:
-        """Determinant at the right ends of all intervals, or at that of interval `point` alone.
+        """The mismatch at the right ends of all intervals, or at that of interval `point` alone.
 
         Returns
         -------
-        (i,) array, NaN where it was not asked for; or (1,)
+        (i,) array, or (1,) where a point was given; NaN at the end of the first interval in the
+        former case, and where integration failed
         """
         trial = make_trial(self.degree, self.cowling, lam)
         start, u = central_plane(self.layers, trial)
@@ -149,21 +178,21 @@ class Matching:
             return np.full(1 if point is not None else self.last + 1, np.nan)
         if point is not None:
             inner, outer = inner[point : point + 1], outer[point : point + 1]
-        areas = _area(inner) * _area(outer)
-        return np.linalg.det(np.concatenate((inner, outer), axis=2)) / areas
+        else:
+            inner, outer = inner[1:], outer[1:]
+        mismatch = _smallest_sine(inner, outer)
+        return mismatch if point is not None else np.append(np.nan, mismatch)
 
     def find(self, lam: float, error: float, fence: tuple[float, float]) -> tuple[float, float]:
         """The mode next to `lam` and its error estimate; NaN where there is none in the fence."""
-        scale = max(abs(lam), error)
+        scale = self._scale(lam, error)
         narrow = min(_BRACKET * scale, (_CURVATURE * scale * (fence[1] - fence[0])) ** 0.5)
         half = max(4.0 * error, narrow)
-        first = tuple(self.at(end, _COARSE) for end in _around(lam, half, fence))
-        with np.errstate(divide="ignore"):
-            energy = self.log_weight - np.log(np.abs(first[1] - first[0]))
-        energy[~np.isfinite(energy)] = -np.inf
-        if np.all(energy == -np.inf):
+        first = [self.at(end, _COARSE) for end in _around(lam, half, fence)]
+        largest = np.max(np.abs(first), axis=0)
+        if np.all(np.isnan(largest)):
             return np.nan, np.nan
-        point = int(np.argmax(energy))
+        point = int(np.nanargmin(largest))
 
         def root(lam: float, half: float, accuracy: Accuracy) -> float:
             def value(trial: float) -> float:
@@ -173,7 +202,12 @@ class Matching:
 
         coarse = root(lam, half, _COARSE)
         fine = root(coarse, narrow, _FINE)
-        return fine, abs(fine - coarse) + ROUND_OFF * abs(fine)
+        return fine, abs(fine - coarse) + ROUND_OFF * self._scale(fine, 0.0)
+
+    def _scale(self, lam: float, error: float) -> float:
+        """What round-off of lam is relative to: radial modes can be neutral, lam = 0, where terms
+        of the size of the squared dynamical frequency cancel."""
+        return max(abs(lam), error, 1.0 if self.degree == 0 else 0.0)
 
 
 def _around(lam: float, half: float, fence: tuple[float, float]) -> tuple[float, float]:
@@ -206,22 +240,36 @@ def _root(
     return np.nan
 
 
-def _area(planes: np.ndarray) -> np.ndarray:
-    """(k,) length of one column or area of two, of (k, n, m) planes."""
-    gram = np.swapaxes(planes, 1, 2) @ planes
-    return np.sqrt(np.linalg.det(gram))
+def _smallest_sine(inner: np.ndarray, outer: np.ndarray) -> np.ndarray:
+    """(k,) sine of the smallest angle between planes, with the sign of their determinant.
+
+    The determinant of two orthonormal pairs of columns is the product of the sines of the two
+    angles between the planes; the sum of the squared cosines is the trace of a product of Gram
+    matrices, and both angles follow.
+    """
+    turned = np.swapaxes(inner, 1, 2)
+    own, other, cross = turned @ inner, np.swapaxes(outer, 1, 2) @ outer, turned @ outer
+    determinant = np.linalg.det(np.concatenate((inner, outer), axis=2))
+    determinant /= np.sqrt(np.linalg.det(own) * np.linalg.det(other))
+    if inner.shape[2] == 1:
+        return determinant
+    product = np.linalg.solve(own, cross) @ np.linalg.solve(other, np.swapaxes(cross, 1, 2))
+    total = 2.0 - np.trace(product, axis1=1, axis2=2)
+    total = np.maximum(total, 2.0 * np.abs(determinant))
+    # The squared sines are the roots of z^2 - total z + determinant^2.
+    larger = 0.5 * (total + np.sqrt(total**2 - 4.0 * determinant**2))
+    return determinant / np.sqrt(np.maximum(larger, 1e-300))
 
 
 def _listed_lam(star: StarModel, modes: ModeSet) -> tuple[np.ndarray, np.ndarray]:
     """lam and its error from the listed frequencies, which are what is on trial."""
-    root = modes.nu / star.nu_dynamical
-    error = modes.nu_error / star.nu_dynamical
-    return np.copysign(root**2, root), 2.0 * np.abs(root) * error + error**2
+    return signed_square(modes.nu / star.nu_dynamical, modes.nu_error / star.nu_dynamical)
 
 
 def _fences(degree: np.ndarray, lam: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     """Limits within which each mode is looked for: the middle to the next one of its degree."""
-    low, high = lam - _FARTHEST * np.abs(lam), lam + _FARTHEST * np.abs(lam)
+    reach = _FARTHEST * np.maximum(np.abs(lam), degree == 0)
+    low, high = lam - reach, lam + reach
     same = degree[1:] == degree[:-1]
     middle = 0.5 * (lam[1:] + lam[:-1])
     low[1:] = np.where(same, np.maximum(low[1:], middle), low[1:])

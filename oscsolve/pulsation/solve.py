@@ -18,6 +18,7 @@ from oscsolve.pulsation.labels import count_labels, kinds, node_labels
 from oscsolve.pulsation.modeset import Census, Eigenfunctions, ModeSet
 from oscsolve.pulsation.options import SolveOptions
 from oscsolve.pulsation.search import count_at
+from oscsolve.pulsation.shooting import with_second_opinion
 from oscsolve.star.findings import Finding
 from oscsolve.star.model import StarModel
 from oscsolve.star.profile import Profile
@@ -45,6 +46,7 @@ class _Request:
     surface: str
     tolerance: float
     options: SolveOptions
+    verify: bool = False
 
 
 def solve_modes(
@@ -56,6 +58,7 @@ def solve_modes(
     gravity: str = "full",
     surface: str = "free",
     tolerance: float = 1e-8,
+    verify: bool = False,
     options: SolveOptions | None = None,
     progress: Progress | None = None,
 ) -> ModeSet:
@@ -71,6 +74,9 @@ def solve_modes(
     surface : "free" (no pressure perturbation at the outermost point) or "isothermal" (an
         isothermal atmosphere above it)
     tolerance : largest relative error of a frequency that is accepted; the mesh follows from it
+    verify : recompute every mode by shooting, an independent method, see
+        `oscsolve.pulsation.shooting`. Modes that differ by more than both error estimates allow
+        are named in a finding of severity "defect", code "second-opinion-differs".
     options : rarely needed knobs
     progress : called as ``progress(done, total, what)`` between degrees
 
@@ -100,9 +106,10 @@ def solve_modes(
     profile = Profile(star)
     findings: list[Finding] = []
     request = _check(star, profile, degrees, band, unit, gravity, surface, tolerance, findings)
-    request = replace(request, options=options or SolveOptions())
+    request = replace(request, options=options or SolveOptions(), verify=verify)
     parts = _all_degrees(star, profile, request, findings, progress)
-    return _assemble_set(star, request, parts, findings, band is None)
+    modes = _assemble_set(star, request, parts, findings, band is None)
+    return with_second_opinion(modes, progress) if verify else modes
 
 
 def _all_degrees(
@@ -426,6 +433,7 @@ def _options(request: _Request, band_chosen: bool) -> dict[str, object]:
         "gravity": request.gravity,
         "surface": request.surface,
         "tolerance": request.tolerance,
+        "verify": request.verify,
         "stages": request.options.stages,
         "phase_per_cell": request.options.phase_limit(request.tolerance),
         "cells_factor": request.options.cells_factor,

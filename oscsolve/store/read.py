@@ -140,6 +140,8 @@ def _plain(value: object) -> object:
 
 def _read_modes(opened: h5py.File, path: Path) -> ModeSet:
     stored = [column for column in schema.MODES if column.name not in _DERIVED]
+    if any(f"/modes/{column.name}" in opened for column in schema.SECOND_OPINION):
+        stored += schema.SECOND_OPINION
     columns = read_columns(opened, path, "modes", stored)
     census = read_columns(opened, path, "census", schema.CENSUS)
     if not isinstance(opened.get("structure"), h5py.Group):

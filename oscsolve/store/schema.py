@@ -46,6 +46,11 @@ MODES = (
     Column("period", "f", "s", "period; infinite for a growing mode"),
     Column("inertia", "f", "1", "kinetic energy / (M x squared displacement at R)"),
 )
+#: Columns of ``/modes`` that are there only where a second opinion was asked for.
+SECOND_OPINION = (
+    Column("nu_second", "f", "uHz", "frequency recomputed by shooting; NaN where none was found"),
+    Column("nu_second_error", "f", "uHz", "numerical error estimate of nu_second"),
+)
 CENSUS = (
     Column("degree", "i", "1", "spherical degree l"),
     Column("low", "f", "uHz", "lower end of the band"),

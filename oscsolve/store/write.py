@@ -50,9 +50,8 @@ def save_modes(modes: ModeSet, path: str | os.PathLike[str], *, overwrite: bool 
     target = Path(path)
     with replacing(target, overwrite) as temporary, h5py.File(temporary, "w") as file:
         _write_root(file, modes)
-        write_columns(
-            file.create_group("modes"), "mode", _columns_of(modes, schema.MODES), schema.MODES
-        )
+        columns = schema.MODES + (schema.SECOND_OPINION if modes.nu_second is not None else ())
+        write_columns(file.create_group("modes"), "mode", _columns_of(modes, columns), columns)
         write_columns(
             file.create_group("census"),
             "degree",
