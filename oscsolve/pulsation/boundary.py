@@ -101,8 +101,9 @@ def surface_numbers(
 def surface_term(top, lam, mu):
     """k11, k12, k22, their derivatives by lam, and the negative pivots hidden in the top.
 
-    `mu` is 1/lam, or 0 for radial motion. An atmosphere in which B > 0 hides one negative
-    pivot of its p1, like any Gauss point with B11 > 0. All NaN where waves escape.
+    `mu` is 1/lam, or 0 for radial motion. For d <= 0 (Gamma1 <= 2) k11 has a pole where B = 0,
+    and an atmosphere in which B > 0 hides one negative pivot of its p1, like any Gauss point with
+    B11 > 0; for d > 0 it is regular there and hides none. All NaN where waves escape.
     """
     beta, slope = mu * top.shell_b1, mu * mu * top.shell_b1
     k11 = top.constant_q1 - top.shell_d0 - top.shell_d1 * lam - beta * top.s1**2
@@ -117,9 +118,15 @@ def surface_term(top, lam, mu):
         b_slope, e_slope = -top.ll * mu * mu, 1.0 / top.r2
         root = math.sqrt(top.d**2 + b * e)
         root_slope = 0.5 * (b_slope * e + b * e_slope) / root
-        k11 -= top.rho * (top.d - root) / b
-        t11 += top.rho * (root_slope / b + (top.d - root) * b_slope / (b * b))
-        hidden = 1 if b > 0.0 else 0
+        if top.d > 0.0:
+            # (d - root)/B = -E/(d + root), without the cancellation near B = 0.
+            sum_ = top.d + root
+            k11 += top.rho * e / sum_
+            t11 += top.rho * (e_slope - e * root_slope / sum_) / sum_
+        else:
+            k11 -= top.rho * (top.d - root) / b
+            t11 += top.rho * (root_slope / b + (top.d - root) * b_slope / (b * b))
+            hidden = 1 if b > 0.0 else 0
     return k11, k12, k22, t11, t12, t22, hidden
 
 

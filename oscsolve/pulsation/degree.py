@@ -39,7 +39,7 @@ class Problem:
     ----------
     degree, gravity, surface : as in `solve_modes`
     low, high : the band in sigma2
-    limit : sigma2 that no trial value may reach (a cut-off), or infinity
+    floor, limit : sigma2 that no trial value may pass (cut-offs), or infinities
     tolerance : largest relative error of a frequency
     """
 
@@ -48,6 +48,7 @@ class Problem:
     surface: str
     low: float
     high: float
+    floor: float
     limit: float
     tolerance: float
 
@@ -106,7 +107,12 @@ def solve_degree(profile: Profile, problem: Problem, options: SolveOptions) -> D
     for rounds in range(_MOST_ROUNDS + 1):
         ladder = _climb(profile, problem, mesh, options.stages, previous)
         error = _error_estimate(ladder)
-        inside = (ladder[2].solution.lam >= problem.low) & (ladder[2].solution.lam <= problem.high)
+        ends = (
+            ladder[2].uniform
+            + 1
+            - count_at(ladder[2].action, np.array([problem.low, problem.high]))
+        )
+        inside = (ladder[2].index >= ends[0]) & (ladder[2].index < ends[1])
         scale = 2.0 * problem.tolerance * np.abs(ladder[2].solution.lam)
         late = inside & (error > np.maximum(scale, 2.0 * _rounding(ladder[2].solution)))
         parts = np.maximum(_cells_to_split(ladder, late), _crowded_cells(ladder[2], inside))
@@ -116,7 +122,6 @@ def solve_degree(profile: Profile, problem: Problem, options: SolveOptions) -> D
             break
         previous, mesh = ladder[2], mesh.split(parts)
     best = ladder[2]
-    ends = best.uniform + 1 - count_at(best.action, np.array([problem.low, problem.high]))
     return DegreeSolution(
         solution=best.solution.select(inside),
         error=error[inside],
@@ -152,7 +157,7 @@ def _search_band(problem: Problem) -> tuple[float, float]:
     margin = _MARGIN * max(abs(problem.low), abs(problem.high))
     low = problem.low - (margin if problem.degree == 0 else _MARGIN * problem.low)
     high = min(problem.high + _MARGIN * abs(problem.high), problem.limit)
-    return low, max(high, problem.high)
+    return min(max(low, problem.floor), problem.low), max(high, problem.high)
 
 
 def _climb(

@@ -22,6 +22,7 @@ class NodalMode:
     q1, q2, p1, p2 : (nodes,) canonical variables, see `equations`; q2 and p2 are zero in the
         Cowling approximation
     xi_h : (nodes,) horizontal displacement, 0 at the centre
+    lam : sigma2
     energy : integral of rho (xi_r^2 + l(l+1) xi_h^2) r^2 over the star
     """
 
@@ -30,6 +31,7 @@ class NodalMode:
     p1: np.ndarray
     p2: np.ndarray
     xi_h: np.ndarray
+    lam: float
     energy: float
 
 
@@ -127,7 +129,9 @@ class Reconstruction:
             r, lam = self.mesh.node[1:], solution.lam[index]
             xi_h[1:] = (p1[1:] / self.rho[1:] + q2[1:]) / (lam * r)
         energy = float(np.sum(at.energy_density * weight * h))
-        return NodalMode(q1=q1, q2=q2, p1=p1, p2=p2, xi_h=xi_h, energy=energy)
+        return NodalMode(
+            q1=q1, q2=q2, p1=p1, p2=p2, xi_h=xi_h, lam=float(solution.lam[index]), energy=energy
+        )
 
     def _radial_potential(self, q1_gauss: np.ndarray) -> np.ndarray:
         """Phi' of radial motion at the nodes: dPhi'/dr = -4 pi rho xi_r, zero outside."""
@@ -174,6 +178,9 @@ class ModelPoints:
             if self.rebuilt.action.ll == 2.0:
                 dphi[~self.inside] = (mode.q2[1] - mode.q2[0]) / self.rebuilt.mesh.node[1]
         xi_h = np.where(self.inside, mode.xi_h[i], xi_r if self._is_dipole else 0.0)
+        outer = (self.jump != 0.0) & (self.rho > 0.0)
+        if self.rebuilt.action.ll > 0.0:
+            xi_h[outer] = (p_prime[outer] / self.rho[outer] + q2[outer]) / (mode.lam * r[outer])
         return tuple(scale * column for column in (xi_r, xi_h, p_prime, q2, dphi))
 
     @property

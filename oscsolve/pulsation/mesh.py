@@ -10,6 +10,11 @@ from numpy.polynomial import legendre
 from oscsolve.errors import BandError
 from oscsolve.star.profile import Profile
 
+#: Largest change of ln rho within a cell.
+_E_FOLDS = 1.5
+_MOST_HALVINGS = 50
+#: Cells narrower than this, relative to their radius, are not split.
+_NARROWEST = 1e-12
 #: In a star with an edge the Lagrangian form is used outside this fractional radius.
 LAGRANGIAN_FROM = 0.99
 
@@ -36,6 +41,8 @@ class Mesh:
 
     def split(self, parts: np.ndarray) -> Mesh:
         """A mesh in which cell i is cut into ``parts[i]`` equal cells."""
+        wide = np.diff(self.node) > _NARROWEST * self.node[1:]
+        parts = np.where(wide, parts, 1)
         cell = np.repeat(np.arange(self.size), parts)
         first = np.cumsum(parts) - parts
         share = (np.arange(cell.size) - first[cell]) / parts[cell]
@@ -53,6 +60,23 @@ def model_mesh(profile: Profile) -> Mesh:
     node = np.append(profile.x[interval], profile.x[interval[-1] + 1])
     outer = profile.has_edge & (node[:-1] >= LAGRANGIAN_FROM * node[-1])
     return Mesh(node=node, interval=interval, lagrangian=outer)
+
+
+def _gentle_mesh(profile: Profile) -> Mesh:
+    """The model's own points, halved until density changes by few e-folds in each cell.
+
+    Weights that span many e-folds in one cell are integrated wrongly and bring modes of the mesh.
+    """
+    mesh = model_mesh(profile)
+    for _ in range(_MOST_HALVINGS):
+        inner = profile.at(mesh.node[:-1], mesh.interval)
+        outer = profile.at(mesh.node[1:], mesh.interval)
+        steep = np.abs(np.log(outer.rho / inner.rho)) > _E_FOLDS
+        finer = mesh.split(np.where(steep, 2, 1))
+        if finer.size == mesh.size:
+            break
+        mesh = finer
+    return mesh
 
 
 def band_mesh(
@@ -77,7 +101,7 @@ def band_mesh(
     BandError
         The band needs more cells than that.
     """
-    mesh = model_mesh(profile)
+    mesh = _gentle_mesh(profile)
     at = profile.at(0.5 * (mesh.node[:-1] + mesh.node[1:]), mesh.interval)
     ll = degree * (degree + 1)
     lamb = ll * at.c2 / at.x**2

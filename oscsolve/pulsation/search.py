@@ -20,7 +20,7 @@ _SETTLED = 3e-14
 _STALLED = 1e-10
 _MOST_STEPS = 60
 #: Memory that the factors of one batch of modes may take, bytes.
-_FACTOR_BYTES = 64_000_000
+_FACTOR_BYTES = 32_000_000
 #: Relative width of a bracket that cannot be split any further.
 _NARROWEST = 4e-15
 
@@ -110,8 +110,8 @@ class PhaseCoordinate:
         share = np.arange(1, parts) / parts
         cuts = np.interp(ends[0] + share * (ends[1] - ends[0]), self.phase, self.lam)
         even = low + share * (high - low)
-        margin = 0.02 * (high - low) / parts
-        inside = np.all(np.diff(np.concatenate(([low], cuts, [high]))) > margin)
+        least = 1e-13 * max(abs(low), abs(high))
+        inside = np.all(np.diff(np.concatenate(([low], cuts, [high]))) > least)
         return cuts if inside else even
 
 
@@ -212,7 +212,10 @@ def polish(
     modes = brackets.low.size
     if modes == 0:
         return empty_solution(action)
-    guess = 0.5 * (brackets.low + brackets.high) if guess is None else guess
+    if guess is None:
+        guess, gap = 0.5 * (brackets.low + brackets.high), np.zeros(modes)
+    else:
+        gap = _gaps(guess, brackets)
     vector, swing = random_start(action, modes) if start is None else start
     out = Solution(
         lam=np.empty(modes),
@@ -225,8 +228,15 @@ def polish(
         work = Workspace(action, batch.stop - batch.start)
         work.vector[:] = vector[batch].T
         work.swing[:] = np.moveaxis(swing[batch], 0, -1)
-        _iterate(action, work, brackets, np.arange(batch.start, batch.stop), guess, out)
+        _iterate(action, work, brackets, np.arange(batch.start, batch.stop), guess, gap, out)
     return out
+
+
+def _gaps(guess: np.ndarray, brackets: Brackets) -> np.ndarray:
+    """(m,) distance of each guess to its neighbours, or to the end of the band."""
+    padded = np.concatenate(([brackets.low[0]], guess, [brackets.high[-1]]))
+    steps = np.abs(np.diff(padded))
+    return np.minimum(steps[:-1], steps[1:])
 
 
 def _lanes_in_memory(action: Action) -> int:
@@ -242,17 +252,17 @@ def _iterate(
     brackets: Brackets,
     modes: np.ndarray,
     guess: np.ndarray,
+    gap: np.ndarray,
     out: Solution,
 ) -> None:
     """Rayleigh quotient iteration of some modes side by side, each leaving when it has settled.
 
     Iterates are fenced by the brackets, which the counts tighten. Near a mode the vector improves
     by (step/gap) in each iteration and the quotient by its square, so that step^2/gap is a safe
-    bound of the step to come.
+    bound of the step to come; `gap`, the distance to the next eigenvalue, is 0 where not known.
     """
     low, high = brackets.low[modes], brackets.high[modes]
-    gap = np.maximum(0.5 * (high - low), 1e-300)
-    lam, last = guess[modes], np.full(modes.size, np.inf)
+    lam, gap, last = guess[modes], gap[modes], np.full(modes.size, np.inf)
     for _ in range(_MOST_STEPS):
         work.iterate(action, lam)
         # Beside a neutral mode, lam = 0, only the terms that cancel there give a scale.
@@ -261,9 +271,10 @@ def _iterate(
         slack = scale * np.maximum(10.0 * _SETTLED, 3.0 * np.where(step < _STALLED, step, 0.0))
         slack = np.maximum(slack, 3.0 * work.noise)
         outside = (new < low - slack) | (new > high + slack) | ~np.isfinite(new)
-        stalled = (step < _STALLED) & (step > 0.5 * last)
-        to_come = step * np.minimum(1.0, np.abs(work.step) / gap)
-        done = ~outside & ((to_come <= _SETTLED) | stalled)
+        stalled = (step < _STALLED) & (step > 0.5 * last) & (step < 1e3 * work.noise / scale)
+        to_come = step * np.minimum(1.0, np.abs(work.step) / np.maximum(gap, 1e-300))
+        quiet = np.abs(work.step) <= work.noise
+        done = ~outside & ((to_come <= _SETTLED) | stalled | quiet)
         if np.any(done):
             here = modes[done]
             out.lam[here] = new[done]

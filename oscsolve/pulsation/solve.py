@@ -10,7 +10,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from oscsolve.errors import BandError, InputError
-from oscsolve.pulsation.boundary import atmosphere_cutoff
+from oscsolve.pulsation.boundary import atmosphere_cutoff, surface_structure
 from oscsolve.pulsation.default_band import choose_band
 from oscsolve.pulsation.degree import DegreeSolution, Problem, solve_degree, sub_bands
 from oscsolve.pulsation.eigenfunction import ModelPoints, Reconstruction
@@ -30,8 +30,10 @@ SURFACE = ("free", "isothermal")
 #: The highest degree that is accepted; the equations hold beyond, memory and patience may not.
 LARGEST_DEGREE = 10_000
 
-#: No radial mode grows faster than this sigma2 unless Gamma1 is absurd.
-_FASTEST_GROWTH = -1e3
+#: A model whose innermost point lies further out than this is told about it.
+_FAR_FROM_CENTRE = 0.01
+#: Thickest shell under an edge, in R, that may move as one piece unmentioned.
+_THICK_SHELL = 1e-6
 
 Progress = Callable[[int, int, str], None]
 
@@ -107,6 +109,7 @@ def solve_modes(
     findings: list[Finding] = []
     request = _check(star, profile, degrees, band, unit, gravity, surface, tolerance, findings)
     request = replace(request, options=options or SolveOptions(), verify=verify)
+    findings += _unmeasured_errors(star, profile)
     parts = _all_degrees(star, profile, request, findings, progress)
     modes = _assemble_set(star, request, parts, findings, band is None)
     return with_second_opinion(modes, progress) if verify else modes
@@ -214,8 +217,10 @@ def _one_degree(
     star: StarModel, profile: Profile, request: _Request, degree: int
 ) -> tuple[_DegreeRows, list[Finding]]:
     findings: list[Finding] = []
-    low, high, limit = _usable_band(star, profile, request, degree, findings)
-    problem = Problem(degree, request.gravity, request.surface, low, high, limit, request.tolerance)
+    low, high, floor, limit = _usable_band(star, profile, request, degree, findings)
+    problem = Problem(
+        degree, request.gravity, request.surface, low, high, floor, limit, request.tolerance
+    )
     pieces, ends = [], []
     for piece in sub_bands(profile, problem):
         found = solve_degree(profile, piece, request.options)
@@ -230,15 +235,15 @@ def _one_degree(
 
 def _usable_band(
     star: StarModel, profile: Profile, request: _Request, degree: int, findings: list[Finding]
-) -> tuple[float, float, float]:
-    """The band in sigma2, cut where an isothermal atmosphere lets waves escape."""
+) -> tuple[float, float, float, float]:
+    """The band in sigma2 and its limits, cut where an isothermal atmosphere lets waves escape."""
     low, high = (sigma2_from_frequency(nu, star.nu_dynamical) for nu in request.band)
     cutoff = atmosphere_cutoff(profile, degree)
     top = frequency_from_sigma2(cutoff.high, star.nu_dynamical)
     if request.surface == "free":
         if high > cutoff.high and not profile.has_edge:
             findings.append(_free_cutoff_finding(top))
-        return low, high, np.inf
+        return low, high, 0.0 if degree > 0 else -np.inf, np.inf
     if low >= cutoff.high:
         raise BandError(
             f"the band lies above the acoustic cut-off of the atmosphere ({top:.6g} uHz for "
@@ -253,7 +258,40 @@ def _usable_band(
     if high > cutoff.high or (low < cutoff.low and degree > 0):
         findings.append(_cut_finding(degree, bottom, top))
     inside = (1.0 + 1e-9) * cutoff.low, (1.0 - 1e-9) * cutoff.high
-    return max(low, inside[0]) if degree > 0 else low, min(high, inside[1]), inside[1]
+    floor = inside[0] if degree > 0 else -np.inf
+    return max(low, floor), min(high, inside[1]), floor, inside[1]
+
+
+def _unmeasured_errors(star: StarModel, profile: Profile) -> list[Finding]:
+    """What the error bars cannot know: structure that the model leaves out at its two ends."""
+    found = []
+    first = float(star.fractional_radius[0])
+    if first > _FAR_FROM_CENTRE:
+        found.append(
+            Finding(
+                "doubt",
+                "centre-extrapolated",
+                f"the innermost point lies at x = {first:.3g}; what is inside was extrapolated, "
+                "and error bars do not cover that",
+                "give the model points down to x = 0.001",
+                place=first,
+            )
+        )
+    at = surface_structure(profile)
+    shell = float(at.w / (at.g * at.x))
+    if profile.has_edge and shell > _THICK_SHELL:
+        found.append(
+            Finding(
+                "doubt",
+                "edge-coarse",
+                f"the last point inside the edge lies {shell:.1e} R below it; the shell between "
+                "moves as one piece, and error bars do not cover that",
+                "grade the points towards the edge, to 1e-8 R or closer",
+                place=float(at.x),
+                size=shell,
+            )
+        )
+    return found
 
 
 def _free_cutoff_finding(top: float) -> Finding:
@@ -281,11 +319,17 @@ def _report_instability(
 ) -> None:
     """Say so where radial modes have sigma2 < 0, whatever the band."""
     uniform = found.mesh.size * found.element.gauss.size
-    count = uniform - int(count_at(found.action, np.array([-1e-9]))[0])
+
+    def below(lam: float) -> int:
+        return uniform - int(count_at(found.action, np.array([lam]))[0])
+
+    count, bound = below(-1e-9), -10.0
     if count == 0:
         return
-    growing = Problem(0, request.gravity, "free", _FASTEST_GROWTH, -1e-9, np.inf, 1e-6)
-    worst = solve_degree(profile, growing, SolveOptions(stages=3)).solution.lam[0]
+    while below(bound) > 0:
+        bound *= 4.0
+    growing = Problem(0, request.gravity, request.surface, bound, -1e-9, -np.inf, np.inf, 1e-6)
+    worst = solve_degree(profile, growing, SolveOptions(stages=3)).solution.lam.min(initial=0.0)
     findings.append(
         Finding(
             "defect",
@@ -364,13 +408,16 @@ def _join_rows(
     columns = [piece.columns for piece in pieces if piece.columns is not None]
     names = ("order", "n_p", "n_g", "kind", "lam", "error", "inertia")
     joined = {name: np.concatenate([getattr(piece, name) for piece in pieces]) for name in names}
+    # A mode exactly where two sub-bands meet may be found from both sides: its number tells.
+    _, once = np.unique(joined["order"], return_index=True)
+    joined = {name: column[once] for name, column in joined.items()}
     return _DegreeRows(
         degree=problem.degree,
         low=frequency_from_sigma2(problem.low, star.nu_dynamical),
         high=frequency_from_sigma2(problem.high, star.nu_dynamical),
         counted=counted,
         cells=max(piece.cells for piece in pieces),
-        columns=np.concatenate(columns, axis=1) if columns else None,
+        columns=np.concatenate(columns, axis=1)[:, once] if columns else None,
         **joined,
     )
 
