@@ -1,4 +1,4 @@
-"""All modes of one degree: searched, polished at three orders, certified by counts, refined."""
+"""All modes of one degree: searched on a rough mesh, polished, certified by counts, refined."""
 
 from __future__ import annotations
 
@@ -6,29 +6,35 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from oscsolve.pulsation.mesh import Element, Mesh, band_mesh, element, model_mesh
+from oscsolve.pulsation.estimate import cells_to_split, changes, error_estimate, rounding
+from oscsolve.pulsation.mesh import Element, Ground, Mesh, band_mesh, element, rough_mesh
 from oscsolve.pulsation.options import SolveOptions
 from oscsolve.pulsation.search import (
-    Brackets,
+    Accuracy,
     PhaseCoordinate,
+    Place,
     Solution,
     count_at,
     empty_solution,
     isolate,
     polish,
+    random_start,
     transfer,
 )
 from oscsolve.pulsation.sweep import Action, build_action
 from oscsolve.star.profile import Profile
 
-#: Round-off of an eigenvalue, relative: a few times what the exact spectra show.
-ROUND_OFF = 1e-13
 #: The search band reaches this much further, relative, so that modes at its ends do not change
-#: sides between orders.
+#: sides between meshes.
 _MARGIN = 2e-3
 _MOST_ROUNDS = 8
 #: Modes of one degree that are held in memory with their vectors.
 _MODES_AT_ONCE = 300
+#: Time that a mode takes per cell, by Gauss points: two passes and a step of inverse iteration.
+_COST = {3: 1.0, 4: 1.6}
+#: Gauss points on the rough mesh, and how well its modes need to be known.
+_ROUGH_STAGES = 3
+_ROUGH_ACCURACY = Accuracy(value=1e-13, vector=1e-9)
 
 
 @dataclass(frozen=True)
@@ -52,6 +58,19 @@ class Problem:
     limit: float
     tolerance: float
 
+    @property
+    def search_band(self) -> tuple[float, float]:
+        """A band a little wider, within the limits."""
+        margin = _MARGIN * max(abs(self.low), abs(self.high))
+        low = self.low - (margin if self.degree == 0 else _MARGIN * self.low)
+        high = min(self.high + _MARGIN * abs(self.high), self.limit)
+        return min(max(low, self.floor), self.low), max(high, self.high)
+
+    @property
+    def accuracy(self) -> Accuracy:
+        """How well eigenvalues and vectors of one mesh are to be polished."""
+        return Accuracy(max(3e-14, 1e-3 * self.tolerance), max(1e-10, min(1e-6, self.tolerance)))
+
 
 @dataclass(frozen=True, eq=False)
 class DegreeSolution:
@@ -59,7 +78,7 @@ class DegreeSolution:
 
     Attributes
     ----------
-    solution : modes at the reported order
+    solution : the modes
     error : (m,) estimated error of lam, absolute
     first, beyond : number of the first mode above the lower end of the band, and of the first one
         above its upper end, by the counts there; comparable between meshes
@@ -78,70 +97,86 @@ class DegreeSolution:
 
 
 @dataclass(frozen=True, eq=False)
-class _Order:
-    """One solution of the ladder of orders on a mesh."""
+class _Discrete:
+    """The action of a problem on one mesh, and its modes, none until they are found."""
 
     mesh: Mesh
     element: Element
     action: Action
     solution: Solution
 
-    @property
-    def uniform(self) -> int:
-        """Negative eigenvalues that the action of this size has in a uniform medium."""
-        return self.action.dof * self.mesh.size * self.element.gauss.size
+    def number(self, negative: np.ndarray) -> np.ndarray:
+        """(m,) int, the number of a mode with so many negative eigenvalues just below it.
 
-    @property
-    def index(self) -> np.ndarray:
-        """(m,) int, the number of each mode, comparable between orders and meshes."""
-        return self.uniform + 1 - self.solution.negative
+        Comparable between meshes: the part that a uniform medium has is taken away.
+        """
+        return self.action.dof * self.mesh.size * self.element.gauss.size + 1 - negative
 
 
-def solve_degree(profile: Profile, problem: Problem, options: SolveOptions) -> DegreeSolution:
+def solve_degree(
+    profile: Profile, ground: Ground, problem: Problem, options: SolveOptions
+) -> DegreeSolution:
     """Find, certify and refine all modes of one degree in the band."""
-    low, high = _search_band(problem)
-    phase = options.phase_limit(problem.tolerance)
-    mesh = band_mesh(profile, problem.degree, (low, high), phase, options.most_cells)
-    mesh = mesh.split(np.full(mesh.size, options.cells_factor))
-    previous: _Order | None = None
+    band = problem.search_band
+    mesh, stages = _cheapest_mesh(ground, problem, options)
+    rough = rough_mesh(ground, problem.degree, band)
+    place = PhaseCoordinate(profile, rough, problem.degree, *band).between
+    known = _discretise(profile, problem, rough, _ROUGH_STAGES)
+    known = _solve(known, band, place, None, _ROUGH_ACCURACY)
     for rounds in range(_MOST_ROUNDS + 1):
-        ladder = _climb(profile, problem, mesh, options.stages, previous)
-        error = _error_estimate(ladder)
-        ends = (
-            ladder[2].uniform
-            + 1
-            - count_at(ladder[2].action, np.array([problem.low, problem.high]))
-        )
-        inside = (ladder[2].index >= ends[0]) & (ladder[2].index < ends[1])
-        scale = 2.0 * problem.tolerance * np.abs(ladder[2].solution.lam)
-        late = inside & (error > np.maximum(scale, 2.0 * _rounding(ladder[2].solution)))
-        parts = np.maximum(_cells_to_split(ladder, late), _crowded_cells(ladder[2], inside))
+        here = _discretise(profile, problem, mesh, stages)
+        here = _solve(here, band, place, known, problem.accuracy)
+        solution = here.solution
+        upper = _discretise(profile, problem, mesh, stages + 1)
+        change = changes(upper.action, stages, solution)
+        error = error_estimate(solution, change)
+        ends = here.number(count_at(here.action, np.array([problem.low, problem.high])))
+        number = here.number(solution.negative)
+        inside = (number >= ends[0]) & (number < ends[1])
+        scale = 2.0 * problem.tolerance * np.abs(solution.lam)
+        late = inside & (error > np.maximum(scale, 2.0 * rounding(solution)))
+        parts = cells_to_split(here.action, upper.action, solution, change, late)
+        parts = np.maximum(parts, _crowded_cells(here, inside))
         if np.all(parts == 1) or rounds == _MOST_ROUNDS:
             break
         if mesh.size + np.sum(parts - 1) > options.most_cells:
             break
-        previous, mesh = ladder[2], mesh.split(parts)
-    best = ladder[2]
+        known, mesh = here, mesh.split(parts)
     return DegreeSolution(
-        solution=best.solution.select(inside),
+        solution=solution.select(inside),
         error=error[inside],
         first=int(ends[0]),
         beyond=int(ends[1]),
-        mesh=best.mesh,
-        element=best.element,
-        action=best.action,
+        mesh=here.mesh,
+        element=here.element,
+        action=here.action,
         refined=rounds,
     )
 
 
-def sub_bands(profile: Profile, problem: Problem) -> list[Problem]:
+def _cheapest_mesh(ground: Ground, problem: Problem, options: SolveOptions) -> tuple[Mesh, int]:
+    """The mesh, and the Gauss points per cell, that reach the tolerance at the least cost."""
+    choices = _COST if options.stages is None else {options.stages: 1.0}
+    meshes = {}
+    for stages in choices:
+        phase = options.phase_limit(problem.tolerance, stages)
+        meshes[stages] = band_mesh(
+            ground, problem.degree, problem.search_band, phase, options.most_cells
+        )
+    best = min(choices, key=lambda stages: choices[stages] * meshes[stages].size)
+    mesh = meshes[best]
+    return mesh.split(np.full(mesh.size, options.cells_factor)), best
+
+
+def sub_bands(profile: Profile, ground: Ground, problem: Problem) -> list[Problem]:
     """The problem in pieces of some hundred modes each, which bounds the memory of a run.
 
     Pieces are cut where the phase of the waves says; which mode lies on which side is settled by
     the counts of each piece, whose numbers must join.
     """
     low, high = problem.low, problem.high
-    coordinate = PhaseCoordinate(profile, model_mesh(profile), problem.degree, low, high)
+    mesh = rough_mesh(ground, problem.degree, (low, high))
+    coordinate = PhaseCoordinate(profile, mesh, problem.degree, low, high)
     expected = coordinate.phase[-1] - coordinate.phase[0]
     parts = int(np.ceil(expected / _MODES_AT_ONCE))
     if parts <= 1:
@@ -153,172 +188,59 @@ def sub_bands(profile: Profile, problem: Problem) -> list[Problem]:
     ]
 
 
-def _search_band(problem: Problem) -> tuple[float, float]:
-    margin = _MARGIN * max(abs(problem.low), abs(problem.high))
-    low = problem.low - (margin if problem.degree == 0 else _MARGIN * problem.low)
-    high = min(problem.high + _MARGIN * abs(problem.high), problem.limit)
-    return min(max(low, problem.floor), problem.low), max(high, problem.high)
+def _discretise(profile: Profile, problem: Problem, mesh: Mesh, stages: int) -> _Discrete:
+    elem = element(stages)
+    action = build_action(profile, mesh, elem, problem.degree, problem.gravity, problem.surface)
+    return _Discrete(mesh, elem, action, empty_solution(action))
 
 
-def _climb(
-    profile: Profile, problem: Problem, mesh: Mesh, stages: int, previous: _Order | None
-) -> list[_Order]:
-    """Solutions with stages - 2, stages - 1 and `stages` Gauss points on one mesh."""
-    ladder: list[_Order] = []
-    for s in range(stages - 2, stages + 1):
-        elem = element(s)
-        action = build_action(profile, mesh, elem, problem.degree, problem.gravity, problem.surface)
-        known = ladder[-1] if ladder else previous
-        start = _Order(mesh, elem, action, empty_solution(action))
-        solution = _solve_order(profile, problem, start, known)
-        ladder.append(replace(start, solution=solution))
-    return ladder
+def _solve(
+    here: _Discrete,
+    band: tuple[float, float],
+    place: Place,
+    known: _Discrete | None,
+    accuracy: Accuracy,
+) -> _Discrete:
+    """Find all modes of an action, from what is known on another mesh if anything is.
 
-
-def _solve_order(
-    profile: Profile, problem: Problem, order: _Order, known: _Order | None
-) -> Solution:
-    """Solve one action, from what is known on another where its counts bear that out."""
-    low, high = _search_band(problem)
-    action = order.action
-    if known is not None and known.solution.lam.size:
-        lam = known.solution.lam
-        cuts = np.concatenate(([low], 0.5 * (lam[1:] + lam[:-1]), [high]))
-        counts = count_at(action, cuts)
-        expected = order.uniform + 1 - known.index
-        if np.array_equal(counts[:-1], expected) and counts[-1] == counts[-2] - 1:
-            start = transfer(
-                known.solution,
-                action.dof,
-                (known.mesh, known.element),
-                (order.mesh, order.element),
-            )
-            return polish(action, Brackets(cuts[:-1], cuts[1:], counts[:-1]), lam, start)
-    place = PhaseCoordinate(profile, order.mesh, problem.degree, low, high).between
-    return polish(action, isolate(action, low, high, place))
-
-
-def _error_estimate(ladder: list[_Order]) -> np.ndarray:
-    """(m,) error of the eigenvalues of highest order.
-
-    With d1 and d2 the changes from the first to the second and the second to the third order,
-    errors fall about geometrically and d2 * (d2/d1) estimates what is left; the ratio is
-    enlarged by 6 and kept between 0.06 and 1. Modes that a lower order does not hold get the
-    change they do have, and lucky dips are filled. Round-off is added: a floor, or what the last
-    polishing step shows.
+    Counts between the known modes tell whether each still has a place of its own. Those that do
+    are taken on from there; what is left is searched as if nothing were known.
     """
-    top = ladder[2]
-    lam = top.solution.lam
-    if lam.size == 0:
-        return np.empty(0)
-    d1, d2 = (_change(ladder[k], ladder[k + 1]) for k in (0, 1))
-    d1 = _follow(ladder[1], top, d1)
-    missing = np.isnan(d1) | (d1 == 0.0)
-    ratio = np.clip(6.0 * np.divide(d2, d1, out=np.ones_like(d2), where=~missing), 0.06, 1.0)
-    unknown = np.isnan(d2)
-    worst = np.nanmax(d2 / np.abs(lam)) if not np.all(unknown) else np.inf
-    d2 = np.where(unknown, worst * np.abs(lam), d2)
-    left = d2 * np.where(unknown, 1.0, ratio) / np.maximum(np.abs(lam), 1e-300)
-    return _without_lucky_dips(left) * np.abs(lam) + _rounding(top.solution)
+    lam = np.empty(0) if known is None else known.solution.lam
+    cuts = np.concatenate((band[:1], 0.5 * (lam[1:] + lam[:-1]), band[1:]))
+    brackets = isolate(here.action, cuts, place)
+    guess = 0.5 * (brackets.low + brackets.high)
+    if known is None:
+        return replace(here, solution=polish(here.action, brackets, guess, None, accuracy))
+    numbers = known.number(known.solution.negative)
+    _, old, new = np.intersect1d(numbers, here.number(brackets.negative), return_indices=True)
+    fits = (lam[old] > brackets.low[new]) & (lam[old] < brackets.high[new])
+    old, new = old[fits], new[fits]
+    guess[new] = lam[old]
+    meshes = (known.mesh, known.element), (here.mesh, here.element)
+    start = transfer(known.solution.select(old), here.action.dof, *meshes)
+    if new.size < guess.size:
+        # Columns of `start` in the places of their modes, white noise in the others.
+        whole = random_start(here.action, guess.size)
+        for columns, found in zip(whole, start, strict=True):
+            columns[..., new] = found
+        start = whole
+    return replace(here, solution=polish(here.action, brackets, guess, start, accuracy))
 
 
-def _without_lucky_dips(values: np.ndarray) -> np.ndarray:
-    """The largest of each value and its two neighbours on either side.
-
-    The change of a mode can vanish by chance on its way through zero, its error does not; modes
-    beside it are of a like kind and do not share the chance.
-    """
-    padded = np.pad(values, 2, mode="edge")
-    return np.max([padded[k : k + values.size] for k in range(5)], axis=0)
-
-
-def _rounding(solution: Solution) -> np.ndarray:
-    """(m,) the part of the error that no refinement takes away."""
-    return np.maximum(ROUND_OFF * np.abs(solution.lam), 2.0 * solution.noise)
-
-
-def _change(lower: _Order, upper: _Order) -> np.ndarray:
-    """(m,) |change of lam| of the modes of `upper` since `lower`; NaN where that lacks a mode."""
-    return np.abs(_follow(lower, upper, lower.solution.lam) - upper.solution.lam)
-
-
-def _follow(lower: _Order, upper: _Order, values: np.ndarray) -> np.ndarray:
-    """Values of the modes of `lower` in the places that these modes have in `upper`."""
-    found = dict(zip(lower.index.tolist(), values.tolist(), strict=True))
-    return np.array([found.get(i, np.nan) for i in upper.index.tolist()], dtype=float)
-
-
-def _crowded_cells(order: _Order, inside: np.ndarray) -> np.ndarray:
+def _crowded_cells(here: _Discrete, inside: np.ndarray) -> np.ndarray:
     """(cells,) int, 3 for a cell that holds most of the energy of a mode, else 1.
 
     Such a mode is a defect of the mesh until a finer one shows it again.
     """
-    action = order.action
-    stages, width = order.element.gauss.size, np.diff(order.mesh.node)[:, None]
-    weight = order.element.weight * width
-    swing = action.point[:, :, 1] * weight
-    lift = np.mean(-action.point[:, :, 8], axis=1) * width[:, 0]
-    parts = np.ones(order.mesh.size, np.int64)
-    for i in np.flatnonzero(inside):
-        q1 = order.solution.vector[i].reshape(-1, action.dof)[::stages, 0]
-        energy = np.sum(swing * order.solution.swing[i] ** 2, axis=1)
-        energy += lift * 0.5 * (q1[1:] ** 2 + q1[:-1] ** 2)
-        parts[energy > 0.5 * np.sum(energy)] = 3
-    return parts
-
-
-def _cells_to_split(ladder: list[_Order], late: np.ndarray) -> np.ndarray:
-    """(cells,) int, 2 for the cells that hold the error of the modes that need it, else 1.
-
-    The action of the difference of two solutions is the difference of their eigenvalues; taken
-    cell by cell, with absolute values, it shows where that comes from. Absolute terms can exceed
-    the difference by far (at the centre they do), so cells are taken, largest first, until what
-    the others hold is small beside the difference itself.
-    """
-    lower, upper = ladder[1], ladder[2]
-    if not np.any(late):
-        return np.ones(upper.mesh.size, np.int64)
-    places = {number: i for i, number in enumerate(lower.index.tolist())}
-    vector, _ = transfer(
-        lower.solution, upper.action.dof, (lower.mesh, lower.element), (upper.mesh, upper.element)
-    )
-    marked = np.zeros(upper.mesh.size, bool)
-    for i in np.flatnonzero(late):
-        j = places.get(int(upper.index[i]))
-        if j is None:
-            return np.full(upper.mesh.size, 2)
-        sign = np.sign(np.dot(vector[j], upper.solution.vector[i]))
-        difference = sign * vector[j] - upper.solution.vector[i]
-        share = _absolute_action(upper, difference, upper.solution.lam[i])
-        order = np.argsort(share)[::-1]
-        running = np.cumsum(share[order])
-        change = abs(lower.solution.lam[j] - upper.solution.lam[i])
-        rest = min(0.02 * running[-1], 0.1 * change)
-        needed = int(np.searchsorted(running, running[-1] - rest)) + 1
-        marked[order[:needed]] = True
-    return np.where(marked, 2, 1)
-
-
-def _absolute_action(order: _Order, vector: np.ndarray, lam: float) -> np.ndarray:
-    """(cells,) sum of the absolute terms of the action in each cell."""
-    action, elem = order.action, order.element
-    b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = np.moveaxis(action.point, -1, 0)
-    beta = b1 / lam if action.ll > 0.0 else np.zeros_like(b1)
-    b11 = b0 + beta
-    # Where b0 and beta cancel the terms below are large and cancel too: keep them in proportion.
-    b11 = np.copysign(np.maximum(np.abs(b11), 0.1 * (np.abs(b0) + np.abs(beta))), b11)
-    h = np.diff(order.mesh.node)[:, None]
-    stages = elem.gauss.size
-    cell = np.arange(order.mesh.size)[:, None] * stages + np.arange(stages + 1)
-    nodal = vector.reshape(-1, action.dof)
-    q1 = nodal[cell, 0] @ elem.value.T
-    e = nodal[cell, 0] @ elem.slope.T / h - c11 * q1
-    z = s1 * q1
-    total = np.abs((d0 + d1 * lam) * q1 * q1)
-    if action.dof == 2:
-        q2 = nodal[cell, 1] @ elem.value.T
-        z = z + s2 * q2
-        f = nodal[cell, 1] @ elem.slope.T / h - c21 * q1
-        total += np.abs(f * f / b22) + np.abs(d2 * q2 * q2)
-    total += np.abs(e * e / b11) + np.abs(b0 * beta * z * z / b11)
-    return np.sum(total * elem.weight * h, axis=1)
+    action, stages = here.action, here.element.gauss.size
+    width = np.diff(here.mesh.node)[:, None]
+    lift = np.mean(-action.point[:, :, 8], axis=1)[:, None] * width
+    nodal = here.solution.vector.reshape(here.mesh.size * stages + 1, action.dof, inside.size)
+    q1 = nodal[::stages, 0][:, inside]
+    energy = lift * 0.5 * (q1[1:] ** 2 + q1[:-1] ** 2)
+    for k in range(stages):
+        factor = action.point[:, k, 1, None] * here.element.weight[k] * width
+        energy += factor * here.solution.swing[:, k][:, inside] ** 2
+    crowded = np.any(energy > 0.5 * np.sum(energy, axis=0), axis=1)
+    return np.where(crowded, 3, 1)

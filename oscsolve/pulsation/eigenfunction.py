@@ -2,15 +2,21 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
 
+from oscsolve.pulsation.compiled import compiled
+from oscsolve.pulsation.inverse import _point_values
 from oscsolve.pulsation.mesh import Element, Mesh
-from oscsolve.pulsation.search import Solution
+from oscsolve.pulsation.search import Solution, batches
 from oscsolve.pulsation.sweep import Action
 from oscsolve.star.model import StarModel
 from oscsolve.star.profile import Profile
+
+#: Modes whose momenta are taken side by side.
+_SIDE_BY_SIDE = 32
 
 
 @dataclass(frozen=True, eq=False)
@@ -35,109 +41,105 @@ class NodalMode:
     energy: float
 
 
-@dataclass(frozen=True, eq=False)
-class GaussMode:
-    """One mode at the Gauss points, (cells, s); gradients are -dp/dr without the jump terms."""
-
-    q1: np.ndarray
-    q2: np.ndarray
-    p1: np.ndarray
-    p2: np.ndarray
-    energy_density: np.ndarray
-    gradient1: np.ndarray
-    gradient2: np.ndarray
-
-
 class Reconstruction:
     """What turns vectors of one action into eigenfunctions; shared by all modes of a degree."""
 
     def __init__(self, profile: Profile, mesh: Mesh, elem: Element, action: Action) -> None:
         self.mesh, self.elem, self.action = mesh, elem, action
         self.width = np.diff(mesh.node)
-        inner = profile.at(mesh.node[1:], mesh.interval)
+        inner = profile.at(mesh.node[1:], mesh.last)
         self.rho = np.concatenate(([np.nan], inner.rho))
         self.g = np.concatenate(([0.0], inner.g))
         self.c2 = np.concatenate(([np.nan], inner.c2))
+        self.n2 = np.concatenate(([0.0], inner.n2))
         lagrangian = mesh.lagrangian | (action.ll == 0.0)
         self.shift = np.where(lagrangian, inner.rho * inner.g / mesh.node[1:] ** 2, 0.0)
-        at_gauss = mesh.node[:-1, None] + self.width[:, None] * elem.gauss
-        self.rho_gauss = profile.at(
-            at_gauss, np.broadcast_to(mesh.interval[:, None], at_gauss.shape)
-        ).rho
-        self.r_gauss = at_gauss
+        at = mesh.at(profile, elem.gauss)
+        shells = 4.0 * np.pi * (at.rho * at.x**2) @ elem.weight
+        #: (cells,) mass inside the outer end of each cell, as the density makes it
+        self.mass = np.cumsum(shells * self.width)
 
-    def at_gauss(self, solution: Solution, index: int) -> GaussMode:
-        """Mode `index` of a solution at the Gauss points."""
-        lam = solution.lam[index]
-        b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = np.moveaxis(self.action.point, -1, 0)
-        q1, slope1 = self._interpolate(solution, index, 0)
-        q2, slope2 = np.zeros_like(q1), np.zeros_like(q1)
-        p2 = np.zeros_like(q1)
-        if self.action.dof == 2:
-            q2, slope2 = self._interpolate(solution, index, 1)
-            p2 = (slope2 - c21 * q1) / b22
-        y = solution.swing[index]
-        if self.action.ll > 0.0:
-            p1 = lam * y - s1 * q1 - s2 * q2
-        else:
-            p1 = (slope1 - c11 * q1) / b0
-        return GaussMode(
-            q1=q1,
-            q2=q2,
-            p1=p1,
-            p2=p2,
-            energy_density=b1 * y * y - d1 * q1 * q1,
-            gradient1=b1 * y * s1 + c11 * p1 + c21 * p2 + (d0 + d1 * lam) * q1,
-            gradient2=b1 * y * s2 + d2 * q2,
-        )
+    def at_nodes(self, solution: Solution) -> Iterator[NodalMode]:
+        """The modes of a solution at the nodes of the mesh, one after the other."""
+        action, stages = self.action, self.elem.gauss.size
+        if solution.lam.size == 0:
+            return
+        for batch in batches(solution.lam.size, _SIDE_BY_SIDE):
+            lam = solution.lam[batch]
+            p1, p2 = np.zeros((2, self.mesh.size + 1, lam.size))
+            energy = np.zeros(lam.size)
+            vector = np.ascontiguousarray(solution.vector[:, batch])
+            swing = np.ascontiguousarray(solution.swing[:, :, batch])
+            ends = np.ascontiguousarray(self.elem.slope), np.ascontiguousarray(self.elem.value)
+            momenta(action, lam, vector, swing, *ends, p1, p2, energy)
+            nodal = vector.reshape(-1, action.dof, lam.size)[::stages]
+            for j in range(lam.size):
+                q2 = nodal[:, 1, j] if action.dof == 2 else p2[:, j]
+                yield self._mode(lam[j], nodal[:, 0, j], q2, p1[:, j], p2[:, j], energy[j])
 
-    def _interpolate(
-        self, solution: Solution, index: int, component: int
-    ) -> tuple[np.ndarray, np.ndarray]:
-        nodal = solution.vector[index].reshape(-1, self.action.dof)[:, component]
-        stages = self.elem.gauss.size
-        cell = np.arange(self.mesh.size)[:, None] * stages + np.arange(stages + 1)
-        right = nodal[cell[:, -1:]]
-        difference = nodal[cell] - right
-        value = right + difference @ self.elem.value.T
-        return value, (difference @ self.elem.slope.T) / self.width[:, None]
-
-    def at_nodes(self, solution: Solution, index: int) -> NodalMode:
-        """Mode `index` of a solution at the nodes of the mesh.
-
-        The momentum at the right end of a cell is the derivative of the cell's action by the
-        value of q there, which is as accurate as the eigenvalue.
-        """
-        at = self.at_gauss(solution, index)
-        stages, weight, h = self.elem.gauss.size, self.elem.weight, self.width[:, None]
-        nodal = solution.vector[index].reshape(-1, self.action.dof)[::stages]
-        q1 = nodal[:, 0]
-        p1, p2 = np.zeros_like(q1), np.zeros_like(q1)
-        value, slope = self.elem.value, self.elem.slope
-        p1[1:] = (at.p1 * slope[:, -1] - h * at.gradient1 * value[:, -1]) @ weight
-        p1[0] = -((at.p1 * slope[:, 0] - h * at.gradient1 * value[:, 0]) @ weight)[0]
+    def _mode(
+        self,
+        lam: float,
+        q1: np.ndarray,
+        q2: np.ndarray,
+        p1: np.ndarray,
+        p2: np.ndarray,
+        energy: float,
+    ) -> NodalMode:
+        p1 = p1.copy()
         p1[1:] += self.shift * q1[1:]
-        if self.action.dof == 2:
-            q2 = nodal[:, 1]
-            p2[1:] = (at.p2 * slope[:, -1] - h * at.gradient2 * value[:, -1]) @ weight
-        elif self.action.ll == 0.0 and self.action.point[0, 0, 6] != 0.0:
-            q2 = self._radial_potential(at.q1)
-        else:
-            q2 = np.zeros_like(q1)
+        if self.action.dof == 1:
+            # Radial motion: Phi' is the sum of its steps, zero outside; its p2 is zero.
+            q2 = np.concatenate((np.cumsum(p2[:0:-1])[::-1], [0.0]))
+            p2 = np.zeros_like(q2)
         xi_h = np.zeros_like(q1)
         if self.action.ll > 0.0:
-            r, lam = self.mesh.node[1:], solution.lam[index]
-            xi_h[1:] = (p1[1:] / self.rho[1:] + q2[1:]) / (lam * r)
-        energy = float(np.sum(at.energy_density * weight * h))
-        return NodalMode(
-            q1=q1, q2=q2, p1=p1, p2=p2, xi_h=xi_h, lam=float(solution.lam[index]), energy=energy
-        )
+            xi_h[1:] = (p1[1:] / self.rho[1:] + q2[1:]) / (lam * self.mesh.node[1:])
+        return NodalMode(q1, q2, p1, p2, xi_h, float(lam), float(energy))
 
-    def _radial_potential(self, q1_gauss: np.ndarray) -> np.ndarray:
-        """Phi' of radial motion at the nodes: dPhi'/dr = -4 pi rho xi_r, zero outside."""
-        density = 4.0 * np.pi * self.rho_gauss * q1_gauss / self.r_gauss**2
-        steps = (density @ self.elem.weight) * self.width
-        return np.concatenate((np.cumsum(steps[::-1])[::-1], [0.0]))
+
+@compiled
+def momenta(action, lam, vector, swing, slope, value, p1, p2, energy):
+    """Momenta at the nodes of the mesh: derivatives of the action of a cell by q at its ends.
+
+    They are as accurate as the eigenvalue, which interpolated values are not.
+
+    Parameters
+    ----------
+    action : `Action`
+    lam : (lanes,) sigma2
+    vector, swing : (nodes * dof, lanes), (cells, s, lanes), a mode in every lane
+    slope, value : (s, s+1) of the `Element`
+    p1, p2 : (cells + 1, lanes), receive the momenta of the form used inside each node. With one
+        degree of freedom p2 receives -h dPhi'/dr, the step of Phi' over the cell, instead.
+    energy : (lanes,), receives twice the kinetic energy
+    """
+    dof, lanes = action.dof, lam.size
+    stages = action.value.shape[0]
+    q1, e, q2, f = np.empty(lanes), np.empty(lanes), np.empty(lanes), np.empty(lanes)
+    for cell in range(action.width.size):
+        h = action.width[cell]
+        for k in range(stages):
+            b0, b1, s1, s2, b22, c11, c21, d0, d1, d2 = action.point[cell, k]
+            w = action.weight[k]
+            up, here = slope[k, stages], h * value[k, stages]
+            _point_values(action, cell, k, vector, q1, e, q2, f)
+            for j in range(lanes):
+                y = swing[cell, k, j]
+                if action.ll > 0.0:
+                    first = lam[j] * y - s1 * q1[j] - s2 * q2[j] * (dof - 1)
+                else:
+                    first = e[j] / (h * b0)
+                second = f[j] / (h * b22) if dof == 2 else 0.0
+                gradient = b1 * y * s1 + c11 * first + c21 * second + (d0 + d1 * lam[j]) * q1[j]
+                p1[cell + 1, j] += w * (first * up - here * gradient)
+                if cell == 0:
+                    p1[0, j] -= w * (first * slope[k, 0] - h * value[k, 0] * gradient)
+                if dof == 2:
+                    p2[cell + 1, j] += w * (second * up - here * (b1 * y * s2 + d2 * q2[j]))
+                else:
+                    p2[cell + 1, j] -= w * h * c21 * q1[j]
+                energy[j] += w * h * (b1 * y * y - d1 * q1[j] * q1[j])
 
 
 class ModelPoints:
@@ -156,13 +158,17 @@ class ModelPoints:
         outer_side[1:] = np.diff(x) == 0.0
         inner_rho = np.nan_to_num(rebuilt.rho[self.index])
         self.jump = np.where(outer_side, self.rho - inner_rho, 0.0)
+        # The cell that holds the photosphere, and where in it.
+        place = min(1.0, node[-1])
+        first = int(np.clip(np.searchsorted(node, place, side="right") - 1, 1, node.size - 2))
+        self.outer = first, float((place - node[first]) / (node[first + 1] - node[first]))
 
     def photosphere(self, mode: NodalMode, degree: int) -> tuple[float, float]:
         """Squared total displacement, and the sign of the radial one, at r = R."""
-        node = self.rebuilt.mesh.node
-        place = min(1.0, node[-1])
-        xi_r = np.interp(place, node[1:], mode.q1[1:] / node[1:] ** 2)
-        xi_h = np.interp(place, node[1:], mode.xi_h[1:])
+        a, share = self.outer
+        b, node = a + 1, self.rebuilt.mesh.node
+        xi_r = (1.0 - share) * mode.q1[a] / node[a] ** 2 + share * mode.q1[b] / node[b] ** 2
+        xi_h = (1.0 - share) * mode.xi_h[a] + share * mode.xi_h[b]
         return float(xi_r**2 + degree * (degree + 1) * xi_h**2), 1.0 if xi_r >= 0.0 else -1.0
 
     def columns(self, mode: NodalMode, scale: float) -> tuple[np.ndarray, ...]:

@@ -7,8 +7,12 @@ is linear in lam (method of the linear pencil):
     T = 1/2 b1 y^2 - 1/2 d1 q1^2,        p1 = (e - b1 y)/b0.
 
 One step solves A(lam) (q, y) = dT/d(q, y) at the previous vector and sets lam <- lam - S/T, the
-Rayleigh quotient: it converges from anywhere and cubically near a mode. Eliminating y gives the
-matrix of `sweep`, and with y0 the previous y
+Rayleigh quotient: it converges from anywhere and cubically near a mode. What lies on top of the
+star is not linear in lam; the zero of S of the new vector is found there by Newton's rule. The
+step also tells how far it may still be from the mode: with theta the angle between the old and
+the new vector in the metric of T, the residual of the new one is sin(theta)/sqrt(2 T), and the
+distance to the eigenvalue is at most its square over the gap to all others (Temple 1928, Kato
+1949). Eliminating y gives the matrix of `sweep`, and with y0 the previous y
 
     y = (e + b0 z + b0 y0)/(lam B11),     p1 = lam y - z - y0,
 
@@ -23,11 +27,13 @@ from __future__ import annotations
 import numpy as np
 
 from oscsolve.pulsation.boundary import surface_term
-from oscsolve.pulsation.compiled import compiled
+from oscsolve.pulsation.compiled import compiled, padded
 from oscsolve.pulsation.sweep import Action, _assemble, _join
 
 #: Spacing of double precision numbers around 1.
 EPSILON = float(np.finfo(np.float64).eps)
+#: Rounds of Newton's rule for what lies on top of the star.
+_NEWTON_STEPS = 3
 
 
 class Workspace:
@@ -39,8 +45,8 @@ class Workspace:
     swing : (cells, s, lanes) y at the Gauss points
     rows : (cells, pivots, size, lanes) the factors of the elimination
     negative : (lanes,) int64, eigenvalues of the action below zero at lam
-    step : (lanes,) -S/T, what to add to lam
-    energy : (lanes,) 2 T of the vector before it was scaled to T = 1/2
+    step : (lanes,) what to add to lam
+    residual : (lanes,) norm of the residual of the new vector, an amount of lam
     noise : (lanes,) round-off of lam to expect from the size of the terms of S
     """
 
@@ -52,18 +58,21 @@ class Workspace:
             (cells, stages),
             (cells, dof * (nodes - 1), dof * nodes),
         )
-        self._memory = tuple(np.empty(int(np.prod(shape)) * lanes) for shape in self._shapes)
+        most = padded(lanes)
+        self._memory = tuple(np.empty(int(np.prod(shape)) * most) for shape in self._shapes)
         self._use(lanes)
         self.swing[:] = 0.0
 
     def _use(self, lanes: int) -> None:
         """Lay arrays of this many lanes over the memory."""
-        self.vector, self.swing, self.rows = (
-            memory[: int(np.prod(shape)) * lanes].reshape(*shape, lanes)
+        width = padded(lanes)
+        self._wide = tuple(
+            memory[: int(np.prod(shape)) * width].reshape(*shape, width)
             for memory, shape in zip(self._memory, self._shapes, strict=True)
         )
+        self.vector, self.swing, self.rows = (array[..., :lanes] for array in self._wide)
         self.negative = np.zeros(lanes, np.int64)
-        self.step, self.energy, self.noise = np.empty(lanes), np.empty(lanes), np.empty(lanes)
+        self.step, self.residual, self.noise = np.empty(lanes), np.empty(lanes), np.empty(lanes)
 
     def keep(self, lanes: np.ndarray) -> None:
         """Go on with some of the lanes only: those where the mask is True."""
@@ -73,30 +82,34 @@ class Workspace:
 
     def iterate(self, action: Action, lam: np.ndarray) -> None:
         """Replace `vector` by the next iterate at `lam` and fill the other arrays."""
-        inverse_step(
-            action,
-            lam,
-            self.vector,
-            self.swing,
-            self.rows,
-            self.negative,
-            self.step,
-            self.energy,
-            self.noise,
-        )
+        used, width = lam.size, padded(lam.size)
+        for array in self._wide[:2]:  # what pads the lanes must be harmless
+            array[..., used:] = array[..., used - 1 : used]
+        step, residual, noise = np.empty((3, width))
+        negative = np.zeros(width, np.int64)
+        trial = np.pad(lam, (0, width - used), "edge")
+        vector, swing, rows = self._wide
+        inverse_step(action, trial, vector, swing, rows, negative, step, residual, noise)
+        for own, wide in (
+            (self.negative, negative),
+            (self.step, step),
+            (self.residual, residual),
+            (self.noise, noise),
+        ):
+            own[:] = wide[:used]
 
 
 @compiled
-def inverse_step(action, lam, vector, swing, rows, negative, step, energy, noise):
+def inverse_step(action, lam, vector, swing, rows, negative, step, residual, noise):
     """One step of inverse iteration in every lane; arguments as in `Workspace`."""
     lanes = lam.size
-    mu = np.empty(lanes)
+    mu, before = np.empty(lanes), np.zeros(lanes)
     for j in range(lanes):
         negative[j] = 0
         mu[j] = 1.0 / lam[j] if action.ll > 0.0 else 0.0
-    _eliminate(action, lam, mu, vector, swing, rows, negative)
+    _eliminate(action, lam, mu, vector, swing, rows, negative, before)
     _substitute(action, vector, rows)
-    _quotient(action, lam, mu, vector, swing, step, energy, noise)
+    _quotient(action, lam, mu, vector, swing, before, step, residual, noise)
 
 
 @compiled
@@ -129,8 +142,8 @@ def _point_values(action, cell, k, vector, q1, e, q2, f):
 
 
 @compiled
-def _energy_gradient(action, cell, mu, vector, swing, scratch, right_side):
-    """Derivative of T by the nodal q of one cell, that by y eliminated."""
+def _energy_gradient(action, cell, mu, vector, swing, scratch, right_side, energy):
+    """Derivative of T by the nodal q of one cell, that by y eliminated; adds up 2 T."""
     dof, stages = action.dof, action.value.shape[0]
     lanes = mu.size
     h = action.width[cell]
@@ -145,8 +158,10 @@ def _energy_gradient(action, cell, mu, vector, swing, scratch, right_side):
             b11 = b0 + b1 * mu[j]
             if b11 == 0.0:
                 b11 = -1e-300
+            y0 = swing[cell, k, j]
             inertia[j] = -w * h * d1 * q1[j]
-            push[j] = w * b1 * mu[j] * swing[cell, k, j] / b11
+            push[j] = w * b1 * mu[j] * y0 / b11
+            energy[j] += inertia[j] * q1[j] + w * h * b1 * y0 * y0
         for i in range(stages + 1):
             v = action.value[k, i]
             along = action.slope[k, i] + h * (b0 * s1 - c11) * v
@@ -158,7 +173,7 @@ def _energy_gradient(action, cell, mu, vector, swing, scratch, right_side):
 
 
 @compiled
-def _eliminate(action, lam, mu, vector, swing, rows, negative):
+def _eliminate(action, lam, mu, vector, swing, rows, negative, energy):
     """Factor the action and carry the right side along; leaves it in `vector`."""
     dof, lanes = action.dof, lam.size
     stages, nodes = action.value.shape
@@ -173,7 +188,7 @@ def _eliminate(action, lam, mu, vector, swing, rows, negative):
     scratch = np.empty((6, lanes))
     for cell in range(cells):
         _assemble(action, cell, lam, mu, scratch, matrix, negative)
-        _energy_gradient(action, cell, mu, vector, swing, scratch, side)
+        _energy_gradient(action, cell, mu, vector, swing, scratch, side, energy)
         last = _join(action, cell, carry, matrix)
         for j in range(lanes):
             for a in range(dof):
@@ -213,6 +228,7 @@ def _eliminate(action, lam, mu, vector, swing, rows, negative):
         negative[j] += hidden
         first = carry[0, 0, j] + k11
         y1 = side_carry[0, j] + t11 * vector[base, j]
+        energy[j] += t11 * vector[base, j] ** 2
         # At a mode found to the last digit a pivot can be zero: any tiny one serves as well.
         if first == 0.0:
             first = EPSILON * abs(carry[0, 0, j])
@@ -220,6 +236,8 @@ def _eliminate(action, lam, mu, vector, swing, rows, negative):
             negative[j] += 1
         if dof == 2:
             y1 += t12 * vector[base + 1, j]
+            energy[j] += 2.0 * t12 * vector[base, j] * vector[base + 1, j]
+            energy[j] += t22 * vector[base + 1, j] ** 2
             y2 = side_carry[1, j] + t12 * vector[base, j] + t22 * vector[base + 1, j]
             coupling = carry[0, 1, j] + k12
             second = carry[1, 1, j] + k22 - coupling * coupling / first
@@ -263,16 +281,14 @@ def _substitute(action, vector, rows):
 
 
 @compiled
-def _quotient(action, lam, mu, vector, swing, step, energy, noise):
+def _quotient(action, lam, mu, vector, swing, before, step, residual, noise):
     """S and T of the vector, term by term; scales it to T = 1/2 and estimates round-off."""
     dof, lanes = action.dof, lam.size
     stages = action.value.shape[0]
     cells = action.width.size
     base = cells * stages * dof
-    total, size = np.zeros(lanes), np.zeros(lanes)
+    total, size, energy = np.zeros(lanes), np.zeros(lanes), np.zeros(lanes)
     q1, e, q2, f = np.empty(lanes), np.empty(lanes), np.empty(lanes), np.empty(lanes)
-    for j in range(lanes):
-        energy[j] = 0.0
     for cell in range(cells):
         h = action.width[cell]
         node = cell * stages * dof
@@ -299,22 +315,42 @@ def _quotient(action, lam, mu, vector, swing, step, energy, noise):
                 size[j] += w * (abs(squeeze) + abs(shear) + abs(lift) + abs(field))
                 energy[j] += w * kinetic
                 swing[cell, k, j] = y
-    scale = np.empty(lanes)
     for j in range(lanes):
-        k11, k12, k22, t11, t12, t22, _ = surface_term(action.top, lam[j], mu[j])
-        a, b = vector[base, j], vector[base + dof - 1, j]
-        total[j] += k11 * a * a
-        energy[j] += t11 * a * a
-        if dof == 2:
-            total[j] += 2.0 * k12 * a * b + k22 * b * b
-            energy[j] += 2.0 * t12 * a * b + t22 * b * b
-        step[j] = -total[j] / energy[j]
+        a, b = vector[base, j], vector[base + dof - 1, j] if dof == 2 else 0.0
+        form, kinetic = _top_values(action, lam[j], a, b)
+        cosine2 = (total[j] + form) ** 2 / (before[j] * (energy[j] + kinetic))
+        step[j] = _zero_of_action(action, lam[j], a, b, total[j], energy[j])
+        energy[j] += kinetic
+        residual[j] = np.sqrt(max(1.0 - cosine2, 0.0) / abs(energy[j]))
         noise[j] = EPSILON * (abs(lam[j]) + size[j] / abs(energy[j]))
-        scale[j] = 1.0 / np.sqrt(abs(energy[j]))
+        energy[j] = 1.0 / np.sqrt(abs(energy[j]))
     for i in range(base + dof):
         for j in range(lanes):
-            vector[i, j] *= scale[j]
+            vector[i, j] *= energy[j]
     for cell in range(cells):
         for k in range(stages):
             for j in range(lanes):
-                swing[cell, k, j] *= scale[j]
+                swing[cell, k, j] *= energy[j]
+
+
+@compiled
+def _top_values(action, lam, a, b):
+    """2 S and 2 T of what lies on top, for q1 = a and q2 = b at the outermost node."""
+    mu = 1.0 / lam if action.ll > 0.0 else 0.0
+    k11, k12, k22, t11, t12, t22, _ = surface_term(action.top, lam, mu)
+    form = k11 * a * a + 2.0 * k12 * a * b + k22 * b * b
+    return form, t11 * a * a + 2.0 * t12 * a * b + t22 * b * b
+
+
+@compiled
+def _zero_of_action(action, lam, a, b, total, energy):
+    """The step from lam to the zero of S of a vector; inside the star S is linear in lam."""
+    form, kinetic = _top_values(action, lam, a, b)
+    step = -(total + form) / (energy + kinetic)
+    for _ in range(_NEWTON_STEPS):
+        form, kinetic = _top_values(action, lam + step, a, b)
+        change = -(total + energy * step + form) / (energy + kinetic)
+        if not abs(change) < abs(step):
+            break
+        step += change
+    return step

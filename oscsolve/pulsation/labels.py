@@ -43,7 +43,7 @@ def node_labels(
     the plain count, which is right there, is used. For l = 0 every zero is p-type and the
     fundamental has order 1.
     """
-    first = _first_reliable(mode.q1)
+    first = _first_reliable(mode, rebuilt)
     r = rebuilt.mesh.node[first:]
     radial, horizontal = mode.q1[first:] / r**2, mode.xi_h[first:]
     if degree == 0:
@@ -68,8 +68,7 @@ def _dipole_crossings(mode: NodalMode, rebuilt: Reconstruction, lam: float) -> t
     r, rho, c2 = rebuilt.mesh.node[first:], rebuilt.rho[first:], rebuilt.c2[first:]
     # The mass that Phi' comes from: where that of the model does not fit its density to a few
     # digits, near the centre, the difference would show zeros that are not there.
-    shells = 4.0 * np.pi * rebuilt.rho_gauss * rebuilt.r_gauss**2 @ rebuilt.elem.weight
-    m = np.cumsum(shells * rebuilt.width)[first - 1 :]
+    m = rebuilt.mass[first - 1 :]
     mean = -(4.0 * np.pi * mode.p2[first:] * r + mode.q2[first:] * r**2) / (3.0 * m)
     relative = mode.q1[first:] / r**2 - mean
     at = np.flatnonzero(np.signbit(relative[1:]) != np.signbit(relative[:-1]))
@@ -85,14 +84,16 @@ def _is_condensed(rebuilt: Reconstruction) -> bool:
     return bool(np.any(rebuilt.rho[1:] < 0.999999 * mean))
 
 
-def _first_reliable(q1: np.ndarray) -> int:
-    """The first node, not the centre, at which q1 stands clear of round-off.
+def _first_reliable(mode: NodalMode, rebuilt: Reconstruction) -> int:
+    """The first node, not the centre, at which q1 can have a zero and stands clear of noise.
 
-    At high degree q1 ~ r^(l+1) falls below any noise on the way to the centre, where nothing
-    oscillates.
+    Around the centre q1 ~ r^(l+1): at high degree it falls below any noise there, but up to the
+    first radius at which waves propagate it has no zeros.
     """
-    size = np.abs(q1[1:])
-    return int(np.argmax(size > 1e-30 * size.max())) + 1
+    clear = np.abs(mode.q1[1:]) > 1e-9 * np.max(np.abs(mode.q1))
+    lamb = rebuilt.action.ll * rebuilt.c2[1:] / rebuilt.mesh.node[1:] ** 2
+    waves = (mode.lam - rebuilt.n2[1:]) * (mode.lam - lamb) > 0.0
+    return int(np.argmax(clear | waves)) + 1
 
 
 def _crossings(radial: np.ndarray, horizontal: np.ndarray) -> tuple[int, int]:

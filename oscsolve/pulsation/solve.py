@@ -15,6 +15,7 @@ from oscsolve.pulsation.default_band import choose_band
 from oscsolve.pulsation.degree import DegreeSolution, Problem, solve_degree, sub_bands
 from oscsolve.pulsation.eigenfunction import ModelPoints, Reconstruction
 from oscsolve.pulsation.labels import count_labels, kinds, node_labels
+from oscsolve.pulsation.mesh import Ground
 from oscsolve.pulsation.modeset import Census, Eigenfunctions, ModeSet
 from oscsolve.pulsation.options import SolveOptions
 from oscsolve.pulsation.search import count_at
@@ -124,11 +125,14 @@ def _all_degrees(
 ) -> list[_DegreeRows]:
     """Degrees side by side in threads (compiled code runs without the interpreter's lock)."""
     degrees, total = request.degrees, len(request.degrees)
+    ground = Ground(profile)
     if progress is not None:
         progress(0, total, f"degree {degrees[0]}")
     rows, noticed = [], []
     with ThreadPoolExecutor(max_workers=min(total, os.cpu_count() or 1)) as pool:
-        jobs = [pool.submit(_one_degree, star, profile, request, degree) for degree in degrees]
+        jobs = [
+            pool.submit(_one_degree, star, profile, ground, request, degree) for degree in degrees
+        ]
         try:
             for done, job in enumerate(jobs, start=1):
                 row, found = job.result()
@@ -214,7 +218,7 @@ def _check_degrees(degrees: Sequence[int]) -> tuple[int, ...]:
 
 
 def _one_degree(
-    star: StarModel, profile: Profile, request: _Request, degree: int
+    star: StarModel, profile: Profile, ground: Ground, request: _Request, degree: int
 ) -> tuple[_DegreeRows, list[Finding]]:
     findings: list[Finding] = []
     low, high, floor, limit = _usable_band(star, profile, request, degree, findings)
@@ -222,12 +226,12 @@ def _one_degree(
         degree, request.gravity, request.surface, low, high, floor, limit, request.tolerance
     )
     pieces, ends = [], []
-    for piece in sub_bands(profile, problem):
-        found = solve_degree(profile, piece, request.options)
+    for piece in sub_bands(profile, ground, problem):
+        found = solve_degree(profile, ground, piece, request.options)
         ends += [found.first, found.beyond]
         pieces.append(_rows(star, profile, request, piece, found))
     if degree == 0:
-        _report_instability(profile, request, found, findings)
+        _report_instability(profile, ground, request, found, findings)
     rows = _join_rows(star, problem, pieces, ends[-1] - ends[0])
     _report_unmet_tolerance(request, rows, findings)
     return rows, findings
@@ -315,7 +319,11 @@ def _cut_finding(degree: int, bottom: float, top: float) -> Finding:
 
 
 def _report_instability(
-    profile: Profile, request: _Request, found: DegreeSolution, findings: list[Finding]
+    profile: Profile,
+    ground: Ground,
+    request: _Request,
+    found: DegreeSolution,
+    findings: list[Finding],
 ) -> None:
     """Say so where radial modes have sigma2 < 0, whatever the band."""
     uniform = found.mesh.size * found.element.gauss.size
@@ -329,7 +337,7 @@ def _report_instability(
     while below(bound) > 0:
         bound *= 4.0
     growing = Problem(0, request.gravity, request.surface, bound, -1e-9, -np.inf, np.inf, 1e-6)
-    worst = solve_degree(profile, growing, SolveOptions(stages=3)).solution.lam.min(initial=0.0)
+    worst = solve_degree(profile, ground, growing, SolveOptions()).solution.lam.min(initial=0.0)
     findings.append(
         Finding(
             "defect",
@@ -370,8 +378,7 @@ def _rows(
     inertia = np.empty(lam.size)
     keep = request.options.eigenfunctions
     columns = np.empty((5, lam.size, star.radius.size)) if keep else None
-    for i in range(lam.size):
-        mode = rebuilt.at_nodes(found.solution, i)
+    for i, mode in enumerate(rebuilt.at_nodes(found.solution)):
         n_p[i], n_g[i] = node_labels(mode, rebuilt, float(lam[i]), degree, full)
         square, sign = points.photosphere(mode, degree)
         inertia[i] = 4.0 * np.pi * mode.energy / square
@@ -481,8 +488,8 @@ def _options(request: _Request, band_chosen: bool) -> dict[str, object]:
         "surface": request.surface,
         "tolerance": request.tolerance,
         "verify": request.verify,
-        "stages": request.options.stages,
-        "phase_per_cell": request.options.phase_limit(request.tolerance),
+        "stages": request.options.stages or "chosen",
+        "phase_per_cell": request.options.phase_per_cell or "chosen",
         "cells_factor": request.options.cells_factor,
         "most_cells": request.options.most_cells,
     }

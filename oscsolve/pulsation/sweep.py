@@ -64,8 +64,7 @@ def build_action(
 ) -> Action:
     """Evaluate the structure at the Gauss points and pack the action of one degree."""
     width = np.diff(mesh.node)
-    x = mesh.node[:-1, None] + width[:, None] * elem.gauss
-    at = profile.at(x, np.broadcast_to(mesh.interval[:, None], x.shape))
+    at = mesh.at(profile, elem.gauss)
     lagrangian = mesh.lagrangian | (degree == 0)
     order = np.append(np.arange(1, elem.gauss.size), (0, elem.gauss.size))
     value, slope = elem.value[:, order], elem.slope[:, order]
@@ -89,14 +88,15 @@ def _node_terms(profile: Profile, mesh: Mesh, lagrangian: np.ndarray) -> np.ndar
     The Lagrangian momentum P1 = p1 - (rho g/r^2) q1 is continuous everywhere, p1 is not where
     density jumps or where the two forms meet.
     """
-    r = mesh.node[1:-1]
-    left, right = profile.at(r, mesh.interval[:-1]), profile.at(r, mesh.interval[1:])
-    inside = np.where(lagrangian[:-1], 0.0, left.rho * left.g / r**2)
-    outside = np.where(lagrangian[1:], 0.0, right.rho * right.g / r**2)
-    term = np.where(
-        (inside != 0.0) & (outside != 0.0) & (left.rho == right.rho), 0.0, outside - inside
-    )
-    return np.concatenate(([0.0], term))
+    jump = mesh.interval[1:] > mesh.last[:-1] + 1
+    place = np.flatnonzero(jump | (lagrangian[1:] != lagrangian[:-1]))
+    term = np.zeros(mesh.size)
+    r = mesh.node[place + 1]
+    left, right = profile.at(r, mesh.last[place]), profile.at(r, mesh.interval[place + 1])
+    inside = np.where(lagrangian[place], 0.0, left.rho * left.g / r**2)
+    outside = np.where(lagrangian[place + 1], 0.0, right.rho * right.g / r**2)
+    term[place + 1] = outside - inside
+    return term
 
 
 @compiled

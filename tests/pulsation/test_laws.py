@@ -9,7 +9,7 @@ from hypothesis import strategies as st
 
 from oscsolve import ModeSet, SolveOptions, StarModel, polytrope, solve_modes
 from oscsolve.pulsation.boundary import atmosphere_cutoff
-from oscsolve.pulsation.mesh import band_mesh, element
+from oscsolve.pulsation.mesh import Ground, band_mesh, element
 from oscsolve.pulsation.search import count_at
 from oscsolve.pulsation.sweep import build_action
 from oscsolve.star.profile import Profile
@@ -30,7 +30,7 @@ def assert_counts_never_rise(
                 cutoff = atmosphere_cutoff(profile, degree)
                 low, high = max(low, 1.001 * cutoff.low), min(high, 0.999 * cutoff.high)
             for gravity in ("full", "cowling"):
-                mesh = band_mesh(profile, degree, (low, high), 0.7, 400_000)
+                mesh = band_mesh(Ground(profile), degree, (low, high), 0.7, 400_000)
                 action = build_action(profile, mesh, element(4), degree, gravity, surface)
                 counts = count_at(action, np.geomspace(low, high, TRIALS))
                 assert np.all(np.diff(counts) <= 0), (degree, surface, gravity)

@@ -161,7 +161,9 @@ def test_the_sun_agrees_without_perturbed_gravity(sun: StarModel):
 
 
 def test_mixed_modes_of_a_subgiant_agree(subgiant: StarModel):
-    modes = solve_modes(subgiant, (1, 2), (500.0, 620.0), verify=True, options=BARE)
+    modes = solve_modes(
+        subgiant, (1, 2), (500.0, 620.0), verify=True, options=BARE, tolerance=1e-10
+    )
     assert np.any(modes.kind == "mixed")
     assert np.all(modes.confirmed) and np.all(relative(modes) < 1e-10)
 

@@ -63,8 +63,8 @@ def test_wrong_bands_are_refused_in_one_line(band, unit, message):
 @pytest.mark.parametrize(
     ("changes", "message"),
     [
-        ({"stages": 2}, "stages must be 3 to 6; got 2"),
-        ({"stages": 7}, "stages must be 3 to 6; got 7"),
+        ({"stages": 1}, "stages must be 2 to 6; got 1"),
+        ({"stages": 7}, "stages must be 2 to 6; got 7"),
         ({"phase_per_cell": 0.0}, r"phase_per_cell must be in \(0, 3\]; got 0"),
         ({"phase_per_cell": 3.5}, r"phase_per_cell must be in \(0, 3\]; got 3.5"),
         ({"cells_factor": 0}, "cells_factor must be at least 1 and most_cells at least 10"),

@@ -179,7 +179,9 @@ def test_errors_fall_with_twice_the_number_of_stages(stages, degree, order, thin
 def _mode_on(profile, mesh, degree, order, stages, parts) -> float:
     cut = mesh.split(np.full(mesh.size, parts))
     action = build_action(profile, cut, element(stages), degree, "full", "free")
-    brackets = isolate(action, 0.8, 100.0, lambda low, high, n: np.linspace(low, high, n + 1)[1:-1])
+    brackets = isolate(
+        action, (0.8, 100.0), lambda low, high, n: np.linspace(low, high, n + 1)[1:-1]
+    )
     orders = action.dof * cut.size * stages + 1 - brackets.negative
     return float(polish(action, brackets).lam[np.flatnonzero(orders == order)[0]])
 
