@@ -48,7 +48,7 @@ if TYPE_CHECKING:
     from oscsolve.star.formats import read_model, write_model
     from oscsolve.star.inspection import Figures, Inspection, inspect_model
     from oscsolve.star.model import StarModel
-    from oscsolve.store import load_modes, save_modes
+    from oscsolve.store import Grid, GridRow, load_grid, load_modes, save_modes
 
 #: Public name: module that has it. Keep in step with the imports above and with `__all__`.
 _HOMES = {
@@ -58,6 +58,8 @@ _HOMES = {
     "Eigenfunctions": "oscsolve.pulsation.modeset",
     "Figures": "oscsolve.star.inspection",
     "Finding": "oscsolve.star.findings",
+    "Grid": "oscsolve.store",
+    "GridRow": "oscsolve.store",
     "IncompleteError": "oscsolve.errors",
     "InputError": "oscsolve.errors",
     "Inspection": "oscsolve.star.inspection",
@@ -80,6 +82,7 @@ _HOMES = {
     "integral_check": "oscsolve.seismology.checks",
     "layered_sphere": "oscsolve.star.build",
     "ledoux_constant": "oscsolve.seismology.rotation",
+    "load_grid": "oscsolve.store",
     "load_modes": "oscsolve.store",
     "mean_rotation": "oscsolve.seismology.two_zones",
     "mode_inertia": "oscsolve.seismology.energy",
@@ -108,6 +111,8 @@ __all__ = [
     "Eigenfunctions",
     "Figures",
     "Finding",
+    "Grid",
+    "GridRow",
     "IncompleteError",
     "InputError",
     "Inspection",
@@ -131,6 +136,7 @@ __all__ = [
     "integral_check",
     "layered_sphere",
     "ledoux_constant",
+    "load_grid",
     "load_modes",
     "mean_rotation",
     "mode_inertia",

@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import os
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from pathlib import Path
+from typing import Any
 
 import h5py
 import numpy as np
@@ -23,7 +24,7 @@ _KINDS = {"i": ("iu", "whole numbers"), "f": ("iuf", "numbers"), "s": ("O", "tex
 _DERIVED = ("period",)
 
 
-def load_modes(path: str | os.PathLike[str]) -> ModeSet:
+def load_mode_file(path: str | os.PathLike[str]) -> ModeSet:
     """The mode list in a file that `save_modes` wrote, equal to it bit by bit.
 
     Parameters
@@ -50,6 +51,7 @@ def load_modes(path: str | os.PathLike[str]) -> ModeSet:
     try:
         with h5py.File(file, "r") as opened:
             check_content(opened, file, schema.CONTENT)
+            check_schema(opened, file)
             return _read_modes(opened, file)
     except InputError:
         raise
@@ -60,14 +62,24 @@ def load_modes(path: str | os.PathLike[str]) -> ModeSet:
 
 
 def check_content(opened: h5py.File, path: Path, content: str) -> None:
-    """Refuse a file that is something else, or is laid out in a way not known yet."""
+    """Refuse a file that is something else."""
     found = opened.attrs.get("content")
-    if found != content:
-        holds = f"holds {found!r}" if isinstance(found, str) else "was not written by oscsolve"
+    if found == content:
+        return
+    if found == schema.GRID_CONTENT:
         raise InputError(
-            f"{path}: this HDF5 file {holds}; expected {content!r} (oscsolve modes MODEL --out "
-            "FILE.h5)"
+            f"{path}: this file holds a grid of {opened.attrs.get('rows', '?')} models; say which "
+            "one (model=, by row or name), or read the table with load_grid"
         )
+    holds = f"holds {found!r}" if isinstance(found, str) else "was not written by oscsolve"
+    made_by = "grid MODEL... --store" if content == schema.GRID_CONTENT else "modes MODEL --out"
+    raise InputError(
+        f"{path}: this HDF5 file {holds}; expected {content!r} (oscsolve {made_by} FILE.h5)"
+    )
+
+
+def check_schema(opened: h5py.File, path: Path) -> None:
+    """Refuse a file that is laid out in a way not known yet."""
     number = opened.attrs.get("schema")
     if not isinstance(number, int | np.integer) or number < 1:
         raise InputError(f"{path}: the attribute 'schema' is no whole number; repeat the run")
@@ -80,9 +92,13 @@ def check_content(opened: h5py.File, path: Path, content: str) -> None:
 
 
 def read_columns(
-    opened: h5py.File, path: Path, group: str, columns: Iterable[Column]
+    opened: h5py.File,
+    path: Path,
+    group: str,
+    columns: Iterable[Column],
+    rows: slice | tuple[()] = (),
 ) -> dict[str, np.ndarray]:
-    """Datasets of one group, name to array; texts as str objects.
+    """Datasets of one group, or some rows of them, name to array; texts as str objects.
 
     Raises
     ------
@@ -101,7 +117,7 @@ def read_columns(
             raise InputError(
                 f"{path}: {place} holds {dataset.dtype}, expected {wanted}; repeat the run"
             )
-        values[column.name] = dataset.asstr()[()] if text else dataset[()]
+        values[column.name] = dataset.asstr()[rows] if text else dataset[rows]
     return values
 
 
@@ -109,10 +125,23 @@ def read_findings(opened: h5py.File, path: Path) -> tuple[Finding, ...]:
     """The findings in ``/findings``; NaN becomes None."""
     columns = read_columns(opened, path, "findings", schema.FINDINGS)
     try:
-        return tuple(
-            Finding(severity, code, message, advice, _known(place), _known(size))
-            for severity, code, message, advice, place, size in zip(*columns.values(), strict=True)
-        )
+        rows = list(zip(*columns.values(), strict=True))
+    except ValueError as error:
+        raise InputError(f"{path}: /findings does not fit together: {error}") from error
+    return tuple(finding_of(row, path) for row in rows)
+
+
+def finding_of(values: Sequence[Any], path: Path) -> Finding:
+    """One finding from the values of its columns; NaN becomes None.
+
+    Raises
+    ------
+    InputError
+        The severity is none that is known.
+    """
+    severity, code, message, advice, place, size = values
+    try:
+        return Finding(severity, code, message, advice, _known(place), _known(size))
     except ValueError as error:
         raise InputError(f"{path}: /findings does not fit together: {error}") from error
 
@@ -151,7 +180,7 @@ def _read_modes(opened: h5py.File, path: Path) -> ModeSet:
             **columns,
             census=Census(**census),
             star=read_structure(opened["structure"]),
-            eigenfunctions=_read_eigenfunctions(opened, path),
+            eigenfunctions=read_eigenfunctions(opened, path),
             options=read_options(opened),
             findings=read_findings(opened, path),
             program_version=str(opened.attrs.get("program_version", "")),
@@ -168,8 +197,11 @@ def _read_modes(opened: h5py.File, path: Path) -> ModeSet:
     return modes
 
 
-def _read_eigenfunctions(opened: h5py.File, path: Path) -> Eigenfunctions | None:
-    if "eigenfunctions" not in opened:
+def read_eigenfunctions(
+    opened: h5py.File, path: Path, group: str = "eigenfunctions"
+) -> Eigenfunctions | None:
+    """The eigenfunctions in a group, or None where there is none."""
+    if group not in opened:
         return None
     columns = (schema.EIGENFUNCTION_RADIUS, *schema.EIGENFUNCTIONS)
-    return Eigenfunctions(**read_columns(opened, path, "eigenfunctions", columns))
+    return Eigenfunctions(**read_columns(opened, path, group, columns))

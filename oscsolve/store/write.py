@@ -61,7 +61,7 @@ def save_modes(modes: ModeSet, path: str | os.PathLike[str], *, overwrite: bool 
         write_structure(file.create_group("structure"), modes.star)
         write_findings(file.create_group("findings"), modes.findings)
         if modes.eigenfunctions is not None:
-            _write_eigenfunctions(file.create_group("eigenfunctions"), modes.eigenfunctions)
+            write_eigenfunctions(file.create_group("eigenfunctions"), modes.eigenfunctions)
 
 
 def write_columns(
@@ -121,10 +121,10 @@ def _write_root(file: h5py.File, modes: ModeSet) -> None:
     file.attrs["model_source"] = modes.star.source
     file.attrs["model_hash"] = modes.star.source_hash
     for name, value in modes.options.items():
-        file.attrs[schema.OPTION + name] = _attribute(name, value)
+        file.attrs[schema.OPTION + name] = attribute(name, value)
 
 
-def _attribute(name: str, value: object) -> object:
+def attribute(name: str, value: object) -> object:
     """An option as HDF5 holds it: texts, numbers, booleans, rows of them; empty for None."""
     if value is None:
         return h5py.Empty("f8")
@@ -156,7 +156,8 @@ def _dataset(
     return dataset
 
 
-def _write_eigenfunctions(group: h5py.Group, rows: Eigenfunctions) -> None:
+def write_eigenfunctions(group: h5py.Group, rows: Eigenfunctions) -> None:
+    """Put eigenfunctions of one model into an empty group, compressed."""
     modes, points = rows.xi_r.shape
     mode = make_dimension(group, "mode", modes)
     point = make_dimension(group, "point", points)

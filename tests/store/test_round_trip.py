@@ -153,7 +153,7 @@ def test_a_killed_writer_leaves_the_old_file_alone(saved):
     script = (
         "import os, signal, sys, oscsolve, oscsolve.store.write as write\n"
         "modes = oscsolve.load_modes(sys.argv[1])\n"
-        "write._write_eigenfunctions = lambda *_: os.kill(os.getpid(), signal.SIGKILL)\n"
+        "write.write_eigenfunctions = lambda *_: os.kill(os.getpid(), signal.SIGKILL)\n"
         "oscsolve.save_modes(modes, sys.argv[1], overwrite=True)\n"
     )
     ended = subprocess.run([sys.executable, "-c", script, os.fspath(path)], check=False)
