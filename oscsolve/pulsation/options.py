@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from dataclasses import dataclass
 
 from oscsolve.errors import InputError
@@ -24,6 +25,8 @@ class SolveOptions:
     cells_factor : every cell of the first mesh is cut into this many more
     most_cells : refinement stops at this many cells and the result says so
     eigenfunctions : keep the eigenfunctions in the result
+    threads : degrees, and modes of a second opinion, worked on side by side; None: one for each
+        core. The result does not depend on it.
 
     Raises
     ------
@@ -36,6 +39,7 @@ class SolveOptions:
     cells_factor: int = 1
     most_cells: int = 400_000
     eigenfunctions: bool = True
+    threads: int | None = None
 
     def __post_init__(self) -> None:
         if self.stages is not None and not 2 <= self.stages <= 6:
@@ -44,6 +48,13 @@ class SolveOptions:
             raise InputError(f"phase_per_cell must be in (0, 3]; got {self.phase_per_cell:g}")
         if self.cells_factor < 1 or self.most_cells < 10:
             raise InputError("cells_factor must be at least 1 and most_cells at least 10")
+        if self.threads is not None and self.threads < 1:
+            raise InputError(f"threads must be at least 1, or None; got {self.threads}")
+
+    @property
+    def most_threads(self) -> int:
+        """Threads that may work at once."""
+        return self.threads or os.cpu_count() or 1
 
     def phase_limit(self, tolerance: float, stages: int) -> float:
         """Phase per cell at which collocation errs by less than `tolerance` almost everywhere."""

@@ -69,7 +69,10 @@ class SecondOpinion:
 
 
 def second_opinion(
-    star: StarModel, modes: ModeSet, progress: Callable[[int, int, str], None] | None = None
+    star: StarModel,
+    modes: ModeSet,
+    progress: Callable[[int, int, str], None] | None = None,
+    threads: int | None = None,
 ) -> SecondOpinion:
     """Every listed mode found again by an independent method.
 
@@ -78,6 +81,7 @@ def second_opinion(
     star : the model that the modes are said to be of
     modes : the list; its options say which gravity and which surface
     progress : called as ``progress(done, total, what)`` between modes
+    threads : modes looked for side by side; None: one for each core
 
     Returns
     -------
@@ -94,7 +98,7 @@ def second_opinion(
         return matching.find(float(lam[i]), float(error[i]), (float(low[i]), float(high[i])))
 
     found = np.full((lam.size, 2), np.nan)
-    with ThreadPoolExecutor(max_workers=os.cpu_count() or 1) as pool:
+    with ThreadPoolExecutor(max_workers=threads or os.cpu_count() or 1) as pool:
         for i, pair in enumerate(pool.map(find, range(lam.size))):
             found[i] = pair
             if progress is not None:
@@ -113,10 +117,12 @@ def second_opinion(
 
 
 def with_second_opinion(
-    modes: ModeSet, progress: Callable[[int, int, str], None] | None = None
+    modes: ModeSet,
+    progress: Callable[[int, int, str], None] | None = None,
+    threads: int | None = None,
 ) -> ModeSet:
     """The list with the columns of a second opinion, and a finding where they differ."""
-    second = second_opinion(modes.star, modes, progress)
+    second = second_opinion(modes.star, modes, progress, threads)
     findings = modes.findings
     astray = np.flatnonzero(~second.agrees)
     if astray.size:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
@@ -90,7 +89,7 @@ def solve_modes(
     findings += unmeasured_errors(star, profile)
     parts = _all_degrees(star, profile, request, findings, progress)
     modes = assemble_set(star, request, parts, findings, band is None)
-    return with_second_opinion(modes, progress) if verify else modes
+    return with_second_opinion(modes, progress, request.options.threads) if verify else modes
 
 
 def _all_degrees(
@@ -106,7 +105,7 @@ def _all_degrees(
     if progress is not None:
         progress(0, total, f"degree {degrees[0]}")
     rows, noticed = [], []
-    with ThreadPoolExecutor(max_workers=min(total, os.cpu_count() or 1)) as pool:
+    with ThreadPoolExecutor(max_workers=min(total, request.options.most_threads)) as pool:
         jobs = [
             pool.submit(_one_degree, star, profile, ground, request, degree) for degree in degrees
         ]

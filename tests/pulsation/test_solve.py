@@ -69,6 +69,7 @@ def test_wrong_bands_are_refused_in_one_line(band, unit, message):
         ({"phase_per_cell": 3.5}, r"phase_per_cell must be in \(0, 3\]; got 3.5"),
         ({"cells_factor": 0}, "cells_factor must be at least 1 and most_cells at least 10"),
         ({"most_cells": 9}, "cells_factor must be at least 1 and most_cells at least 10"),
+        ({"threads": 0}, "threads must be at least 1, or None; got 0"),
     ],
 )
 def test_options_out_of_range_are_refused(changes, message):
@@ -111,6 +112,24 @@ def test_a_band_chosen_by_the_program_is_told(sun):
     sunlike = solve_modes(sun, [0], options=SolveOptions(eigenfunctions=False))
     # Where convection excites: a quarter to nine tenths of the cut-off of about 5200 uHz.
     assert 1000 < sunlike.census.low[0] < 1800 and 4000 < sunlike.census.high[0] < 5200
+
+
+def test_the_number_of_threads_changes_no_digit():
+    star = polytrope(3)
+    serial, parallel = (
+        solve_modes(
+            star,
+            [0, 1, 2],
+            (2.0, 60.0),
+            unit="sigma2",
+            verify=True,
+            options=SolveOptions(threads=threads),
+        )
+        for threads in (1, 3)
+    )
+    np.testing.assert_array_equal(serial.nu, parallel.nu)
+    np.testing.assert_array_equal(serial.nu_second, parallel.nu_second)
+    np.testing.assert_array_equal(serial.eigenfunctions.xi_h, parallel.eigenfunctions.xi_h)
 
 
 def test_a_tolerance_out_of_reach_is_reported():
