@@ -18,7 +18,6 @@ from oscsolve.pulsation.remarks import (
 )
 from oscsolve.pulsation.request import Request, check_request
 from oscsolve.pulsation.rows import DegreeRows, assemble_set, degree_rows, join_rows
-from oscsolve.pulsation.shooting import with_second_opinion
 from oscsolve.star.findings import Finding
 from oscsolve.star.model import StarModel
 from oscsolve.star.profile import Profile
@@ -89,7 +88,12 @@ def solve_modes(
     findings += unmeasured_errors(star, profile)
     parts = _all_degrees(star, profile, request, findings, progress)
     modes = assemble_set(star, request, parts, findings, band is None)
-    return with_second_opinion(modes, progress, request.options.threads) if verify else modes
+    if not verify:
+        return modes
+    # Imported here: it needs libraries whose import takes longer than solving a star.
+    from oscsolve.pulsation.shooting import with_second_opinion
+
+    return with_second_opinion(modes, progress, request.options.threads)
 
 
 def _all_degrees(

@@ -10,7 +10,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.interpolate import CubicSpline
 
 from oscsolve.star.model import StarModel
 
@@ -106,6 +105,9 @@ def _cells(r: np.ndarray, f: np.ndarray, real: np.ndarray) -> np.ndarray:
         # Against r, not ln r: near the centre f/r is linear in r, and steps in ln r are large.
         at, slope = r[part], f[part] / r[part]
         if part.size >= 4:
+            # Imported here: the import takes longer than solving a star.
+            from scipy.interpolate import CubicSpline
+
             out[part[:-1]] = np.diff(CubicSpline(at, slope).antiderivative()(at))
         elif part.size >= 2:
             out[part[:-1]] = 0.5 * np.diff(at) * (slope[1:] + slope[:-1])

@@ -5,7 +5,6 @@ from __future__ import annotations
 import math
 
 import numpy as np
-from scipy.interpolate import CubicSpline
 
 #: Groups of cells over which pressure is added up before G is read off; enough for a robust
 #: median, few enough that the rounding of a ten-digit file averages out inside each.
@@ -33,8 +32,8 @@ def estimate_gravity(
 
     Notes
     -----
-    dlnP/dlnr = -G m rho / (r P). The right side without G is integrated over ln r with a cubic
-    spline (fourth order); cells are grouped so that ln P falls by equal amounts, each group
+    dlnP/dlnr = -G m rho / (r P). The right side without G is integrated over ln r with cubics
+    (fourth order); cells are grouped so that ln P falls by equal amounts, each group
     gives one G, and the median is kept. The uncertainty adds the spread of the groups over the
     square root of their number and the difference from the trapezoidal rule, since many codes
     hold the balance to second order on their own mesh.
@@ -49,8 +48,12 @@ def estimate_gravity(
     if high - low < 20:
         low, high = 0, r.size
     part = slice(low, high)
-    integral = CubicSpline(lnr, weight).antiderivative()(lnr)[part]
-    plain = np.concatenate(([0.0], np.cumsum(np.diff(lnr) * (weight[1:] + weight[:-1]) / 2)))[part]
+    step, slope = np.diff(lnr), np.gradient(weight, lnr, edge_order=2)
+    trapezoids = step * (weight[1:] + weight[:-1]) / 2
+    plain = np.concatenate(([0.0], np.cumsum(trapezoids)))[part]
+    # A cubic through the values and slopes of both ends of each cell (fourth order).
+    corrected = trapezoids - step**2 * np.diff(slope) / 12
+    integral = np.concatenate(([0.0], np.cumsum(corrected)))[part]
     fall = lnp[low] - lnp[part]
     edges = _equal_falls(fall)
     values = np.diff(fall[edges]) / np.diff(integral[edges])

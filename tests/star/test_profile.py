@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from scipy.interpolate import Akima1DInterpolator
 
 from oscsolve import StarModel, layered_sphere, polytrope
-from oscsolve.star.profile import Profile
+from oscsolve.star.profile import Profile, gentle_slopes
 
 
 def thinned(star: StarModel, step: int) -> StarModel:
@@ -113,3 +114,14 @@ def test_an_edge_is_seen_and_left_out(star_n3):
 def test_a_star_without_an_edge_is_used_to_its_last_point(polytrope_n1):
     profile = Profile(polytrope_n1(100))
     assert not profile.has_edge and profile.outermost()[0] == profile.x[-1] == 1.0
+
+
+def test_gentle_slopes_are_those_of_the_library():
+    """Against scipy.interpolate.Akima1DInterpolator, method "makima" (a general library)."""
+    generator = np.random.default_rng(3)
+    for size in (3, 4, 50):
+        x = np.cumsum(generator.uniform(0.1, 1.0, size))
+        f = generator.normal(size=size)
+        f[size // 2 :] = np.round(f[size // 2 :])
+        expected = Akima1DInterpolator(x, f, method="makima")(x, nu=1)
+        assert gentle_slopes(x, f) == pytest.approx(expected, rel=1e-12, abs=1e-13)
