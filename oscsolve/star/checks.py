@@ -205,6 +205,8 @@ def _meaning_of_mass(star: StarModel) -> str:
 def _who_is_wrong(star: StarModel) -> str:
     """Hydrostatic balance with the mass that the density makes tells which column to blame."""
     balance = measure_balance(star, mass_of_density(star))
+    if balance.x.size == 0:
+        return ""
     if abs(float(np.median(balance.hydrostatic))) < _FITS:
         return "; with the mass that the density makes, pressure balances: the mass is wrong"
     own = measure_balance(star)
@@ -234,6 +236,15 @@ def _saturated_mass(star: StarModel) -> Iterator[Finding]:
 
 def _hydrostatic(balance: Balance, wrong_mass: bool) -> Iterator[Finding]:
     """Where dP/dr departs from -G m rho/r^2, a uniform factor (which is G) apart."""
+    if balance.x.size == 0:
+        yield Finding(
+            "doubt",
+            "balance-unknown",
+            "pressure falls by more than a factor e between all points: hydrostatic balance "
+            "cannot be checked, and no interpolation between such points means much",
+            "give the model more points",
+        )
+        return
     middle = 1.0 + float(np.median(balance.hydrostatic))
     residual = np.abs((1.0 + balance.hydrostatic) / middle - 1.0)
     if wrong_mass or not np.all(np.isfinite(residual)):

@@ -223,7 +223,9 @@ def _points(star: StarModel) -> tuple[np.ndarray, ...]:
     if star.pressure[-1] == 0.0:
         alpha[-1] = alpha[-2]
     if x[0] == 0.0:
-        alpha[0] = _even_limit(x[1:3], alpha[1:3])
+        # Two radii that differ: the first points may be a density jump.
+        second = int(np.argmax(x > x[1]))
+        alpha[0] = _even_limit(x[[1, second]], alpha[[1, second]])
     gamma1 = np.array(star.gamma1)
     beta = alpha + 1.0 / gamma1
     columns = (x, q, rho, w, beta, gamma1)

@@ -58,7 +58,8 @@ class Comparison:
         assert np.all(true <= stated), f"{true[worst]:.2e} beyond its bar {stated[worst]:.2e}"
         speaking = true > ROUNDED
         assert np.count_nonzero(speaking) >= least, "too few errors to judge the bars by"
-        assert np.median(stated[speaking] / true[speaking]) < 100.0
+        # Twice the change to the next order is stated, and that change is the error.
+        assert np.median(stated[speaking] / true[speaking]) < 10.0
 
 
 def sphere_comparison(tolerance: float, options: SolveOptions) -> Comparison:

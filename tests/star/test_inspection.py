@@ -352,3 +352,12 @@ def test_a_coarse_mesh_is_not_mistaken_for_wrong_columns(index, keep_every):
     names = ("radius", "mass", "pressure", "density", "gamma1", "a_star")
     coarse = star.with_changes(**{name: getattr(star, name)[kept] for name in names})
     assert codes(coarse) <= {"mesh-coarse"}
+
+
+@pytest.mark.parametrize("points", [5, 8])
+def test_points_too_far_apart_to_judge_are_told(points):
+    star = oscsolve.polytrope(3)
+    keep = np.unique(np.linspace(0, star.radius.size - 1, points).astype(int))
+    names = ("radius", "mass", "pressure", "density", "gamma1", "a_star")
+    sparse = star.with_changes(**{name: getattr(star, name)[keep] for name in names})
+    assert "balance-unknown" in {finding.code for finding in inspect_model(sparse)}

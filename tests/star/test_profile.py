@@ -125,3 +125,13 @@ def test_gentle_slopes_are_those_of_the_library():
         f[size // 2 :] = np.round(f[size // 2 :])
         expected = Akima1DInterpolator(x, f, method="makima")(x, nu=1)
         assert gentle_slopes(x, f) == pytest.approx(expected, rel=1e-12, abs=1e-13)
+
+
+def test_a_repeated_first_radius_leaves_the_centre_finite():
+    star = polytrope(3)
+    twice = np.insert(np.arange(star.radius.size), 1, 1)
+    names = ("radius", "mass", "pressure", "density", "gamma1", "a_star")
+    profile = Profile(star.with_changes(**{name: getattr(star, name)[twice] for name in names}))
+    inner = profile.at(np.array([0.5 * profile.x[1]]), np.array([0]))
+    plain = Profile(star).at(inner.x, np.array([0]))
+    assert inner.n2 == pytest.approx(plain.n2, rel=1e-6)
