@@ -6,11 +6,13 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from oscsolve.errors import IncompleteError
 from oscsolve.pulsation.estimate import cells_to_split, changes, error_estimate, rounding
 from oscsolve.pulsation.mesh import Element, Ground, Mesh, band_mesh, element, rough_mesh
 from oscsolve.pulsation.options import SolveOptions
 from oscsolve.pulsation.search import (
     Accuracy,
+    Brackets,
     PhaseCoordinate,
     Place,
     Solution,
@@ -122,15 +124,16 @@ def solve_degree(
     rough = rough_mesh(ground, problem.degree, band)
     place = PhaseCoordinate(profile, rough, problem.degree, *band).between
     known = _discretise(profile, problem, rough, _ROUGH_STAGES)
-    known = _solve(known, band, place, None, _ROUGH_ACCURACY)
+    known = _search(known, band, place)
     for rounds in range(_MOST_ROUNDS + 1):
         here = _discretise(profile, problem, mesh, stages)
-        here = _solve(here, band, place, known, problem.accuracy)
+        edges = np.array([band[0], problem.low, problem.high, band[1]])
+        first, *ends, beyond = here.number(count_at(here.action, edges))
+        here = _take_on(here, band, place, known, problem.accuracy, (first, beyond))
         solution = here.solution
         upper = _discretise(profile, problem, mesh, stages + 1)
         change = changes(upper.action, stages, solution)
         error = error_estimate(solution, change)
-        ends = here.number(count_at(here.action, np.array([problem.low, problem.high])))
         number = here.number(solution.negative)
         inside = (number >= ends[0]) & (number < ends[1])
         scale = 2.0 * problem.tolerance * np.abs(solution.lam)
@@ -194,28 +197,58 @@ def _discretise(profile: Profile, problem: Problem, mesh: Mesh, stages: int) -> 
     return _Discrete(mesh, elem, action, empty_solution(action))
 
 
-def _solve(
+def _search(here: _Discrete, band: tuple[float, float], place: Place) -> _Discrete:
+    """Find all modes of an action when nothing is known."""
+    brackets = isolate(here.action, band, place)
+    return replace(here, solution=polish(here.action, brackets, accuracy=_ROUGH_ACCURACY))
+
+
+def _take_on(
     here: _Discrete,
     band: tuple[float, float],
     place: Place,
-    known: _Discrete | None,
+    known: _Discrete,
     accuracy: Accuracy,
+    ends: tuple[int, int],
 ) -> _Discrete:
-    """Find all modes of an action, from what is known on another mesh if anything is.
+    """Find all modes of an action, from those on another mesh.
 
-    Counts between the known modes tell whether each still has a place of its own. Those that do
-    are taken on from there; what is left is searched as if nothing were known.
+    Each is expected between the middles to its neighbours. By Weinstein (1934) an eigenvalue lies
+    within the residual of each that was polished; if these intervals lie inside their own
+    brackets, and the counts at the two ends of the band allow no more, then every bracket holds
+    exactly one. Where that fails, counts at all middles show which brackets to search anew.
+    `ends` are the numbers of the first mode in the band and the first beyond it, by those counts.
     """
-    lam = np.empty(0) if known is None else known.solution.lam
+    lam = known.solution.lam
     cuts = np.concatenate((band[:1], 0.5 * (lam[1:] + lam[:-1]), band[1:]))
-    brackets = isolate(here.action, cuts, place)
-    guess = 0.5 * (brackets.low + brackets.high)
-    if known is None:
-        return replace(here, solution=polish(here.action, brackets, guess, None, accuracy))
     numbers = known.number(known.solution.negative)
+    if np.array_equal(numbers, np.arange(*ends)):
+        if numbers.size == 0:
+            return here
+        expected = Brackets(cuts[:-1], cuts[1:], here.number(numbers))
+        try:
+            solution = _polish_from(here, expected, known, accuracy)
+        except IncompleteError:
+            pass
+        else:
+            reach = 2.0 * solution.radius + solution.noise
+            if np.all((solution.lam - reach > cuts[:-1]) & (solution.lam + reach < cuts[1:])):
+                return replace(here, solution=solution)
+    brackets = isolate(here.action, cuts, place)
+    return replace(here, solution=_polish_from(here, brackets, known, accuracy))
+
+
+def _polish_from(
+    here: _Discrete, brackets: Brackets, known: _Discrete, accuracy: Accuracy
+) -> Solution:
+    """Modes in brackets, started from those of the same number where these lie inside."""
+    if brackets.low.size == 0:
+        return here.solution
+    lam, numbers = known.solution.lam, known.number(known.solution.negative)
     _, old, new = np.intersect1d(numbers, here.number(brackets.negative), return_indices=True)
     fits = (lam[old] > brackets.low[new]) & (lam[old] < brackets.high[new])
     old, new = old[fits], new[fits]
+    guess = 0.5 * (brackets.low + brackets.high)
     guess[new] = lam[old]
     meshes = (known.mesh, known.element), (here.mesh, here.element)
     start = transfer(known.solution.select(old), here.action.dof, *meshes)
@@ -225,7 +258,7 @@ def _solve(
         for columns, found in zip(whole, start, strict=True):
             columns[..., new] = found
         start = whole
-    return replace(here, solution=polish(here.action, brackets, guess, start, accuracy))
+    return polish(here.action, brackets, guess, start, accuracy)
 
 
 def _crowded_cells(here: _Discrete, inside: np.ndarray) -> np.ndarray:

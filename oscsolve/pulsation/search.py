@@ -55,6 +55,7 @@ class Solution:
     vector : (nodes * dof, m) nodal q
     swing : (cells, s, m) y = rho r xi_h at the Gauss points
     noise : (m,) round-off of lam, absolute
+    radius : (m,) an eigenvalue lies within this of lam (Weinstein 1934: the residual)
     """
 
     lam: np.ndarray
@@ -62,10 +63,11 @@ class Solution:
     vector: np.ndarray
     swing: np.ndarray
     noise: np.ndarray
+    radius: np.ndarray
 
     def select(self, keep: np.ndarray) -> Solution:
         """The solution restricted to some of its modes."""
-        columns = (self.lam, self.negative, self.vector, self.swing, self.noise)
+        columns = (self.lam, self.negative, self.vector, self.swing, self.noise, self.radius)
         return Solution(*(column[..., keep] for column in columns))
 
 
@@ -196,7 +198,7 @@ def _cut_further(
 def empty_solution(action: Action) -> Solution:
     """A solution without modes, of the shapes that belong to an action."""
     vector, swing = random_start(action, 0)
-    return Solution(np.empty(0), np.empty(0, np.int64), vector, swing, np.empty(0))
+    return Solution(np.empty(0), np.empty(0, np.int64), vector, swing, np.empty(0), np.empty(0))
 
 
 def random_start(action: Action, modes: int) -> tuple[np.ndarray, np.ndarray]:
@@ -243,7 +245,8 @@ def polish(
         return empty_solution(action)
     guess = 0.5 * (brackets.low + brackets.high) if guess is None else guess
     vector, swing = random_start(action, modes) if start is None else start
-    out = Solution(np.empty(modes), brackets.negative, vector, swing, np.empty(modes))
+    lam, noise, radius = np.empty((3, modes))
+    out = Solution(lam, brackets.negative, vector, swing, noise, radius)
     for batch in batches(modes, _lanes_in_memory(action)):
         work = Workspace(action, batch.stop - batch.start)
         work.vector[:] = vector[:, batch]
@@ -296,6 +299,7 @@ def _iterate(
             out.lam[here] = new[done]
             rest = np.where(settled, left, np.where(stalled, np.abs(work.step), 0.0))
             out.noise[here] = np.maximum(work.noise, rest)[done]
+            out.radius[here] = work.residual[done]
             out.vector[:, here] = work.vector[:, done]
             out.swing[:, :, here] = work.swing[:, :, done]
             if np.all(done):
