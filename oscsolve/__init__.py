@@ -20,6 +20,7 @@ if TYPE_CHECKING:
         ModelError,
         OscsolveError,
     )
+    from oscsolve.grid import GridModel, GridProgress, GridSummary, solve_grid
     from oscsolve.pulsation.modeset import Census, Eigenfunction, Eigenfunctions, ModeSet
     from oscsolve.pulsation.options import SolveOptions
     from oscsolve.pulsation.solve import solve_modes
@@ -85,7 +86,10 @@ _HOMES = {
     "Figures": "oscsolve.star.inspection",
     "Finding": "oscsolve.star.findings",
     "Grid": "oscsolve.store",
+    "GridModel": "oscsolve.grid",
+    "GridProgress": "oscsolve.grid",
     "GridRow": "oscsolve.store",
+    "GridSummary": "oscsolve.grid",
     "IncompleteError": "oscsolve.errors",
     "InputError": "oscsolve.errors",
     "Inspection": "oscsolve.star.inspection",
@@ -140,6 +144,7 @@ _HOMES = {
     "rotational_splitting": "oscsolve.seismology.rotation",
     "save_modes": "oscsolve.store",
     "separations": "oscsolve.seismology.separations",
+    "solve_grid": "oscsolve.grid",
     "solve_modes": "oscsolve.pulsation.solve",
     "step_rotation": "oscsolve.seismology.rotation",
     "structure_kernel": "oscsolve.seismology.kernels",
@@ -157,7 +162,10 @@ __all__ = [
     "Figures",
     "Finding",
     "Grid",
+    "GridModel",
+    "GridProgress",
     "GridRow",
+    "GridSummary",
     "IncompleteError",
     "InputError",
     "Inspection",
@@ -213,6 +221,7 @@ __all__ = [
     "rotational_splitting",
     "save_modes",
     "separations",
+    "solve_grid",
     "solve_modes",
     "step_rotation",
     "structure_kernel",
