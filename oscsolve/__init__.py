@@ -20,17 +20,32 @@ if TYPE_CHECKING:
         ModelError,
         OscsolveError,
     )
+    from oscsolve.grid import GridModel, GridProgress, GridSummary, solve_grid
     from oscsolve.pulsation.modeset import Census, Eigenfunction, Eigenfunctions, ModeSet
     from oscsolve.pulsation.options import SolveOptions
     from oscsolve.pulsation.solve import solve_modes
+    from oscsolve.seismology.asymptotics import Asymptotics, asymptotics
     from oscsolve.seismology.checks import (
         IntegralCheck,
         Orthogonality,
         integral_check,
         orthogonality,
     )
+    from oscsolve.seismology.depth import acoustic_depth
     from oscsolve.seismology.energy import energy_density, energy_share, mode_inertia, mode_mass
     from oscsolve.seismology.kernels import frequency_change, structure_kernel
+    from oscsolve.seismology.large_separation import (
+        LargeSeparationFit,
+        fit_large_separation,
+        fit_ridge,
+    )
+    from oscsolve.seismology.mixed import MixedModeFit, fit_mixed_modes
+    from oscsolve.seismology.period_spacing import (
+        PeriodSpacingFit,
+        PeriodSpacings,
+        fit_period_spacing,
+        period_spacings,
+    )
     from oscsolve.seismology.rotation import (
         Rotation,
         Splittings,
@@ -40,6 +55,17 @@ if TYPE_CHECKING:
         rotational_splitting,
         step_rotation,
         uniform_rotation,
+    )
+    from oscsolve.seismology.scaling import (
+        effective_temperature,
+        large_separation_scaling,
+        nu_max_scaling,
+    )
+    from oscsolve.seismology.separations import (
+        Separation,
+        combine_frequencies,
+        joint_covariance,
+        separations,
     )
     from oscsolve.seismology.tables import read_rotation, read_splittings
     from oscsolve.seismology.two_zones import MeanRotation, MeasuredSplittings, mean_rotation
@@ -52,6 +78,7 @@ if TYPE_CHECKING:
 
 #: Public name: module that has it. Keep in step with the imports above and with `__all__`.
 _HOMES = {
+    "Asymptotics": "oscsolve.seismology.asymptotics",
     "BandError": "oscsolve.errors",
     "Census": "oscsolve.pulsation.modeset",
     "Eigenfunction": "oscsolve.pulsation.modeset",
@@ -59,27 +86,45 @@ _HOMES = {
     "Figures": "oscsolve.star.inspection",
     "Finding": "oscsolve.star.findings",
     "Grid": "oscsolve.store",
+    "GridModel": "oscsolve.grid",
+    "GridProgress": "oscsolve.grid",
     "GridRow": "oscsolve.store",
+    "GridSummary": "oscsolve.grid",
     "IncompleteError": "oscsolve.errors",
     "InputError": "oscsolve.errors",
     "Inspection": "oscsolve.star.inspection",
     "IntegralCheck": "oscsolve.seismology.checks",
+    "LargeSeparationFit": "oscsolve.seismology.large_separation",
     "MeanRotation": "oscsolve.seismology.two_zones",
     "MeasuredSplittings": "oscsolve.seismology.two_zones",
     "MissingPackageError": "oscsolve.errors",
+    "MixedModeFit": "oscsolve.seismology.mixed",
     "ModeSet": "oscsolve.pulsation.modeset",
     "ModelError": "oscsolve.errors",
     "Orthogonality": "oscsolve.seismology.checks",
     "OscsolveError": "oscsolve.errors",
+    "PeriodSpacingFit": "oscsolve.seismology.period_spacing",
+    "PeriodSpacings": "oscsolve.seismology.period_spacing",
     "Rotation": "oscsolve.seismology.rotation",
+    "Separation": "oscsolve.seismology.separations",
     "SolveOptions": "oscsolve.pulsation.options",
     "Splittings": "oscsolve.seismology.rotation",
     "StarModel": "oscsolve.star.model",
+    "acoustic_depth": "oscsolve.seismology.depth",
+    "asymptotics": "oscsolve.seismology.asymptotics",
+    "combine_frequencies": "oscsolve.seismology.separations",
+    "effective_temperature": "oscsolve.seismology.scaling",
     "energy_density": "oscsolve.seismology.energy",
     "energy_share": "oscsolve.seismology.energy",
+    "fit_large_separation": "oscsolve.seismology.large_separation",
+    "fit_mixed_modes": "oscsolve.seismology.mixed",
+    "fit_period_spacing": "oscsolve.seismology.period_spacing",
+    "fit_ridge": "oscsolve.seismology.large_separation",
     "frequency_change": "oscsolve.seismology.kernels",
     "inspect_model": "oscsolve.star.inspection",
     "integral_check": "oscsolve.seismology.checks",
+    "joint_covariance": "oscsolve.seismology.separations",
+    "large_separation_scaling": "oscsolve.seismology.scaling",
     "layered_sphere": "oscsolve.star.build",
     "ledoux_constant": "oscsolve.seismology.rotation",
     "load_grid": "oscsolve.store",
@@ -88,7 +133,9 @@ _HOMES = {
     "mode_inertia": "oscsolve.seismology.energy",
     "mode_mass": "oscsolve.seismology.energy",
     "model_rotation": "oscsolve.seismology.rotation",
+    "nu_max_scaling": "oscsolve.seismology.scaling",
     "orthogonality": "oscsolve.seismology.checks",
+    "period_spacings": "oscsolve.seismology.period_spacing",
     "polytrope": "oscsolve.star.build",
     "read_model": "oscsolve.star.formats",
     "read_rotation": "oscsolve.seismology.tables",
@@ -96,6 +143,8 @@ _HOMES = {
     "rotation_kernel": "oscsolve.seismology.rotation",
     "rotational_splitting": "oscsolve.seismology.rotation",
     "save_modes": "oscsolve.store",
+    "separations": "oscsolve.seismology.separations",
+    "solve_grid": "oscsolve.grid",
     "solve_modes": "oscsolve.pulsation.solve",
     "step_rotation": "oscsolve.seismology.rotation",
     "structure_kernel": "oscsolve.seismology.kernels",
@@ -105,6 +154,7 @@ _HOMES = {
 }
 
 __all__ = [
+    "Asymptotics",
     "BandError",
     "Census",
     "Eigenfunction",
@@ -112,28 +162,46 @@ __all__ = [
     "Figures",
     "Finding",
     "Grid",
+    "GridModel",
+    "GridProgress",
     "GridRow",
+    "GridSummary",
     "IncompleteError",
     "InputError",
     "Inspection",
     "IntegralCheck",
+    "LargeSeparationFit",
     "MeanRotation",
     "MeasuredSplittings",
     "MissingPackageError",
+    "MixedModeFit",
     "ModeSet",
     "ModelError",
     "Orthogonality",
     "OscsolveError",
+    "PeriodSpacingFit",
+    "PeriodSpacings",
     "Rotation",
+    "Separation",
     "SolveOptions",
     "Splittings",
     "StarModel",
     "__version__",
+    "acoustic_depth",
+    "asymptotics",
+    "combine_frequencies",
+    "effective_temperature",
     "energy_density",
     "energy_share",
+    "fit_large_separation",
+    "fit_mixed_modes",
+    "fit_period_spacing",
+    "fit_ridge",
     "frequency_change",
     "inspect_model",
     "integral_check",
+    "joint_covariance",
+    "large_separation_scaling",
     "layered_sphere",
     "ledoux_constant",
     "load_grid",
@@ -142,7 +210,9 @@ __all__ = [
     "mode_inertia",
     "mode_mass",
     "model_rotation",
+    "nu_max_scaling",
     "orthogonality",
+    "period_spacings",
     "polytrope",
     "read_model",
     "read_rotation",
@@ -150,6 +220,8 @@ __all__ = [
     "rotation_kernel",
     "rotational_splitting",
     "save_modes",
+    "separations",
+    "solve_grid",
     "solve_modes",
     "step_rotation",
     "structure_kernel",

@@ -2,15 +2,15 @@
 
 from __future__ import annotations
 
-import os
 import sys
 import threading
 import time
 from collections.abc import Callable, Iterable
-from pathlib import Path
 from typing import TYPE_CHECKING, TextIO
 
 import click
+
+from oscsolve.pulsation.cache import compile_is_due
 
 if TYPE_CHECKING:
     from oscsolve.star.findings import Finding
@@ -72,9 +72,10 @@ class Progress:
         while not self._end.wait(wait):
             wait = self._interval
             if self._state is not None:
-                done, total, what = self._state
-                seconds = time.monotonic() - self._started
-                self._say(f"{what} ({done} of {total} done, {seconds:.0f} s)")
+                self._say(self._told(*self._state, time.monotonic() - self._started))
+
+    def _told(self, done: int, total: int, what: str, seconds: float) -> str:
+        return f"{what} ({done} of {total} done, {seconds:.0f} s)"
 
     def _say(self, text: str) -> None:
         line = f"oscsolve: {text}"
@@ -84,17 +85,6 @@ class Progress:
         else:
             self._stream.write(line + "\n")
         self._stream.flush()
-
-
-def compile_is_due() -> bool:
-    """True where no compiled solver is found on disk, so that the first run must compile it."""
-    if os.environ.get("NUMBA_DISABLE_JIT", "0") not in ("", "0"):
-        return False
-    chosen = os.environ.get("NUMBA_CACHE_DIR")
-    if chosen:
-        return next(Path(chosen).rglob("*.nbi"), None) is None
-    package = Path(__file__).resolve().parents[1] / "pulsation"
-    return next((package / "__pycache__").glob("*.nbi"), None) is None
 
 
 def show_findings(findings: Iterable[Finding]) -> None:

@@ -25,7 +25,7 @@ def likely_band(star: StarModel, profile: Profile) -> tuple[tuple[float, float],
     of its outermost layer, the range excited by convection. Any other star gets about a dozen
     g and p orders around its dynamical frequency, from the asymptotic spacings.
     """
-    if not profile.has_edge and _has_convective_envelope(star):
+    if not profile.has_edge and has_convective_envelope(star):
         cutoff = acoustic_cutoff(profile) * star.nu_dynamical
         limits = tuple(share * cutoff for share in _CONVECTIVE_BAND)
         why = "0.25 to 0.9 of the acoustic cut-off, for a convective envelope"
@@ -38,7 +38,7 @@ def likely_band(star: StarModel, profile: Profile) -> tuple[tuple[float, float],
     return (low, high), why
 
 
-def _has_convective_envelope(star: StarModel) -> bool:
+def has_convective_envelope(star: StarModel) -> bool:
     """By A* in the outer layers, or by the temperature of a star that is no white dwarf.
 
     Temperature is asked because A* of ionisation zones is wrong in files that lack Gamma1.
