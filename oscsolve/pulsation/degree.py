@@ -39,6 +39,9 @@ _ROUGH_STAGES = 3
 _ROUGH_ACCURACY = Accuracy(value=1e-13, vector=1e-9)
 
 
+NO_GUESSES = np.empty(0)
+
+
 @dataclass(frozen=True)
 class Problem:
     """What is to be solved for one degree.
@@ -116,15 +119,22 @@ class _Discrete:
 
 
 def solve_degree(
-    profile: Profile, ground: Ground, problem: Problem, options: SolveOptions
+    profile: Profile,
+    ground: Ground,
+    problem: Problem,
+    options: SolveOptions,
+    guesses: np.ndarray = NO_GUESSES,
 ) -> DegreeSolution:
-    """Find, certify and refine all modes of one degree in the band."""
+    """Find, certify and refine all modes of one degree in the band.
+
+    `guesses` are values of lam, rising, that speed up the search and change nothing else.
+    """
     band = problem.search_band
     mesh, stages = _cheapest_mesh(ground, problem, options)
     rough = rough_mesh(ground, problem.degree, band)
     place = PhaseCoordinate(profile, rough, problem.degree, *band).between
     known = _discretise(profile, problem, rough, _ROUGH_STAGES)
-    known = _search(known, band, place)
+    known = _search(known, band, place, guesses)
     for rounds in range(_MOST_ROUNDS + 1):
         here = _discretise(profile, problem, mesh, stages)
         edges = np.array([band[0], problem.low, problem.high, band[1]])
@@ -197,10 +207,19 @@ def _discretise(profile: Profile, problem: Problem, mesh: Mesh, stages: int) -> 
     return _Discrete(mesh, elem, action, empty_solution(action))
 
 
-def _search(here: _Discrete, band: tuple[float, float], place: Place) -> _Discrete:
-    """Find all modes of an action when nothing is known."""
-    brackets = isolate(here.action, band, place)
-    return replace(here, solution=polish(here.action, brackets, accuracy=_ROUGH_ACCURACY))
+def _search(
+    here: _Discrete, band: tuple[float, float], place: Place, guesses: np.ndarray
+) -> _Discrete:
+    """Find all modes of an action from nothing, or from guesses of any quality."""
+    guesses = guesses[(guesses > band[0]) & (guesses < band[1])]
+    middles = 0.5 * (guesses[1:] + guesses[:-1])
+    brackets = isolate(here.action, [band[0], *middles, band[1]], place)
+    start = 0.5 * (brackets.low + brackets.high)
+    if guesses.size:
+        nearest = guesses[np.argmin(np.abs(guesses - start[:, None]), axis=1)]
+        inside = (nearest > brackets.low) & (nearest < brackets.high)
+        start = np.where(inside, nearest, start)
+    return replace(here, solution=polish(here.action, brackets, start, accuracy=_ROUGH_ACCURACY))
 
 
 def _take_on(

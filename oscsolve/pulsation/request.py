@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
 
 from oscsolve.errors import BandError, InputError
 from oscsolve.pulsation.default_band import choose_band
+from oscsolve.pulsation.modeset import ModeSet
 from oscsolve.pulsation.options import SolveOptions
 from oscsolve.star.findings import Finding
 from oscsolve.star.model import StarModel
@@ -30,6 +33,7 @@ class Request:
     tolerance: float
     options: SolveOptions
     verify: bool = False
+    guesses: Mapping[int, np.ndarray] = field(default_factory=dict)  # sigma2 by degree
 
 
 def check_request(
@@ -80,6 +84,16 @@ def _check_degrees(degrees: Sequence[int]) -> tuple[int, ...]:
     return tuple(listed)
 
 
+def guesses_from(similar: ModeSet | None) -> Mapping[int, np.ndarray]:
+    """sigma2 of the modes of another star, rising, for each degree."""
+    if similar is None:
+        return {}
+    return {
+        int(degree): np.unique(similar.sigma2[similar.degree == degree])
+        for degree in similar.census.degree
+    }
+
+
 def recorded_options(request: Request, band_chosen: bool) -> dict[str, object]:
     return {
         "degrees": ",".join(str(degree) for degree in request.degrees),
@@ -90,6 +104,7 @@ def recorded_options(request: Request, band_chosen: bool) -> dict[str, object]:
         "surface": request.surface,
         "tolerance": request.tolerance,
         "verify": request.verify,
+        "similar_star_given": bool(request.guesses),
         "stages": request.options.stages or "chosen",
         "phase_per_cell": request.options.phase_per_cell or "chosen",
         "cells_factor": request.options.cells_factor,

@@ -6,7 +6,7 @@ from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
 
-from oscsolve.pulsation.degree import Problem, solve_degree, sub_bands
+from oscsolve.pulsation.degree import NO_GUESSES, Problem, solve_degree, sub_bands
 from oscsolve.pulsation.mesh import Ground
 from oscsolve.pulsation.modeset import ModeSet
 from oscsolve.pulsation.options import SolveOptions
@@ -16,7 +16,7 @@ from oscsolve.pulsation.remarks import (
     unmeasured_errors,
     usable_band,
 )
-from oscsolve.pulsation.request import Request, check_request
+from oscsolve.pulsation.request import Request, check_request, guesses_from
 from oscsolve.pulsation.rows import DegreeRows, assemble_set, degree_rows, join_rows
 from oscsolve.star.findings import Finding
 from oscsolve.star.model import StarModel
@@ -35,6 +35,7 @@ def solve_modes(
     surface: str = "free",
     tolerance: float = 1e-8,
     verify: bool = False,
+    similar: ModeSet | None = None,
     options: SolveOptions | None = None,
     progress: Progress | None = None,
 ) -> ModeSet:
@@ -53,6 +54,8 @@ def solve_modes(
     verify : recompute every mode by shooting, an independent method, see
         `oscsolve.pulsation.shooting`. Modes that differ by more than both error estimates allow
         are named in a finding of severity "defect", code "second-opinion-differs".
+    similar : modes of a star much like this one. Their sigma2, free of the scale of the star, are
+        first guesses; the census proves the list as ever.
     options : rarely needed knobs
     progress : called as ``progress(done, total, what)`` between degrees
 
@@ -84,7 +87,9 @@ def solve_modes(
     request = check_request(
         star, profile, degrees, band, unit, gravity, surface, tolerance, findings
     )
-    request = replace(request, options=options or SolveOptions(), verify=verify)
+    request = replace(
+        request, options=options or SolveOptions(), verify=verify, guesses=guesses_from(similar)
+    )
     findings += unmeasured_errors(star, profile)
     parts = _all_degrees(star, profile, request, findings, progress)
     modes = assemble_set(star, request, parts, findings, band is None)
@@ -138,9 +143,10 @@ def _one_degree(
     problem = Problem(
         degree, request.gravity, request.surface, low, high, floor, limit, request.tolerance
     )
+    guesses = request.guesses.get(degree, NO_GUESSES)
     pieces, ends = [], []
     for piece in sub_bands(profile, ground, problem):
-        found = solve_degree(profile, ground, piece, request.options)
+        found = solve_degree(profile, ground, piece, request.options, guesses)
         ends += [found.first, found.beyond]
         pieces.append(degree_rows(star, profile, request, piece, found))
     if degree == 0:

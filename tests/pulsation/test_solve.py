@@ -213,3 +213,14 @@ def test_high_degrees_are_solved_like_any_other():
     f = modes.sigma2[modes.order == 0]
     # sigma2 = l (1 - 1/l ...) for spheres: one part in l is what the plane formula misses.
     assert modes.complete and f == pytest.approx([300.0], rel=0.02)
+
+
+def test_modes_of_a_similar_star_change_nothing_but_the_way():
+    band, wanted = (0.5, 300.0), polytrope(3)
+    plain = solve_modes(wanted, [0, 1, 2], band, unit="sigma2")
+    for index, gravity in ((3.05, "full"), (2.0, "cowling")):
+        near = solve_modes(polytrope(index), [0, 1, 2, 3], band, unit="sigma2", gravity=gravity)
+        led = solve_modes(wanted, [0, 1, 2], band, unit="sigma2", similar=near)
+        assert led.complete and np.array_equal(led.order, plain.order)
+        assert np.all(np.abs(led.nu - plain.nu) <= plain.nu_error)
+        assert led.options["similar_star_given"] and not plain.options["similar_star_given"]
