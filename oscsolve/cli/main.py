@@ -20,6 +20,8 @@ COMMANDS = {
     "modes": ("modes", "List the modes of one star, with a proof that none is missing."),
     "inspect": ("inspect", "Tell what a model holds and what is wrong or doubtful about it."),
     "split": ("split", "Split modes by slow rotation, and turn splittings into rotation."),
+    "report": ("report", "Tell what the modes of one star say, as text or as one page."),
+    "grid": ("grid", "List the modes of many models, on all cores or on a cluster."),
     "build": ("build", "Make an analytic star and write it as a model file."),
 }
 
@@ -76,8 +78,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
         # The reader (head, less) has seen enough.
         _abandon_output()
         return _EXIT_PIPE
-    except KeyboardInterrupt:
-        return _complain("interrupted", _EXIT_INTERRUPTED)
+    except KeyboardInterrupt as error:
+        return _complain(": ".join(["interrupted", *map(str, error.args)]), _EXIT_INTERRUPTED)
     except click.UsageError as error:
         return _complain(_usage(error), _EXIT_USAGE)
     except click.ClickException as error:

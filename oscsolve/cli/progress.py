@@ -6,7 +6,7 @@ import sys
 import threading
 import time
 from collections.abc import Callable, Iterable
-from typing import TYPE_CHECKING, TextIO
+from typing import TYPE_CHECKING, Self, TextIO
 
 import click
 
@@ -46,10 +46,11 @@ class Progress:
         self._started = time.monotonic()
         self._state: tuple[int, int, str] | None = None
         self._width = 0
+        self._lock = threading.Lock()
         self._end = threading.Event()
         self._clock = threading.Thread(target=self._keep_time, daemon=True)
 
-    def __enter__(self) -> Progress:
+    def __enter__(self) -> Self:
         self._clock.start()
         return self
 
@@ -74,17 +75,27 @@ class Progress:
             if self._state is not None:
                 self._say(self._told(*self._state, time.monotonic() - self._started))
 
+    def note(self, text: str) -> None:
+        """A line that stays, whatever stands in the line that is rewritten."""
+        with self._lock:
+            if self._width:
+                self._stream.write("\r" + " " * self._width + "\r")
+                self._width = 0
+            self._stream.write(f"oscsolve: {' '.join(text.split())}\n")
+            self._stream.flush()
+
     def _told(self, done: int, total: int, what: str, seconds: float) -> str:
         return f"{what} ({done} of {total} done, {seconds:.0f} s)"
 
     def _say(self, text: str) -> None:
         line = f"oscsolve: {text}"
-        if self._terminal:
-            self._stream.write("\r" + line.ljust(self._width))
-            self._width = max(self._width, len(line))
-        else:
-            self._stream.write(line + "\n")
-        self._stream.flush()
+        with self._lock:
+            if self._terminal:
+                self._stream.write("\r" + line.ljust(self._width))
+                self._width = max(self._width, len(line))
+            else:
+                self._stream.write(line + "\n")
+            self._stream.flush()
 
 
 def show_findings(findings: Iterable[Finding]) -> None:

@@ -165,7 +165,7 @@ def solve_grid(
     ...     )
     ...     orders = [row.order.tolist() for row in oscsolve.load_grid(path)]
     >>> summary.complete, orders
-    (2, [[1, 2], [1, 2]])
+    (2, [[2], [1, 2]])
     """
     knobs = replace(options or SolveOptions(), eigenfunctions=eigenfunctions)
     settings = checked_settings(

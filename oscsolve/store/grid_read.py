@@ -31,6 +31,10 @@ from oscsolve.store.rows import MODE_COLUMNS, SECOND_COLUMNS, GridRow, Parameter
 
 #: Modes read from the file in one go while iterating.
 _MODES_AT_ONCE = 1 << 16
+#: Options that a grid records and the mode list of one star does not.
+_OF_THE_GRID = (
+    "band_first", "band_second", "band_unit", "gravitational_constant", "eigenfunctions",
+)  # fmt: skip
 
 
 @dataclass(frozen=True, eq=False)
@@ -272,11 +276,8 @@ def load_grid_modes(
     columns = {
         column.name: getattr(row, column.name) for column in (*MODE_COLUMNS, *SECOND_COLUMNS)
     }
-    options = {
-        name: value
-        for name, value in grid.options.items()
-        if name not in ("band_first", "band_second", "band_unit", "gravitational_constant")
-    }
+    options = {name: value for name, value in grid.options.items() if name not in _OF_THE_GRID}
+    options["band_chosen_by_program"] = grid.options.get("band_first") is None
     options |= {"band_low_uHz": row.band_low, "band_high_uHz": row.band_high}
     return ModeSet(
         **columns,

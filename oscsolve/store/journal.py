@@ -228,6 +228,10 @@ class Journal:
 
     def load(self) -> None:
         """Open the journal on disk, take in its rows and cut off a record that was not finished."""
+        self._open(self._take_in())
+
+    def _take_in(self) -> int:
+        """Read every sound row of the journal; where the last of them ends."""
         end, gaps, first = 0, 0, True
         with self.path.open("rb") as stream:
             for begin, after, content in scan(stream):
@@ -251,7 +255,17 @@ class Journal:
             )
         if size > end:
             self.notes.append(f"{self.path}: the last row was not finished and is computed again")
-        self._open(end)
+        return end
+
+    def look(self) -> None:
+        """Take in the rows of a journal or a store without changing anything on disk."""
+        if self.path.exists():
+            self._take_in()
+        elif self.store.exists():
+            grid = load_grid(self.store)
+            check_same_run(self.store, grid.options, grid.program_version, self.header)
+            for row in grid:
+                self.entries[row_key(row)] = self._entry(0, row, None, 0.0)
 
     def begin(self) -> None:
         """Make an empty journal."""

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import io
+import os
 import time
 
 import click
@@ -146,8 +147,11 @@ def test_a_compile_is_due_where_no_compiled_code_lies(monkeypatch, tmp_path):
     monkeypatch.delenv("NUMBA_DISABLE_JIT", raising=False)
     monkeypatch.setenv("NUMBA_CACHE_DIR", str(tmp_path))
     assert progress.compile_is_due()
-    (tmp_path / "sweep.nbi").write_text("")
+    index = tmp_path / "sweep.count_negative-44.py311.nbi"
+    index.write_text("")
     assert not progress.compile_is_due()
-    (tmp_path / "sweep.nbi").unlink()
+    os.utime(index, (0, 0))
+    assert progress.compile_is_due(), "the source is newer than what was compiled of it"
+    index.unlink()
     monkeypatch.setenv("NUMBA_DISABLE_JIT", "1")
     assert not progress.compile_is_due()
