@@ -1,10 +1,12 @@
 """Integrals over a star with eigenfunctions that are known on the points of its model.
 
 Between two points the structure is that of `oscsolve.star.profile` (what the solver saw) and
-xi_r, xi_h, p'/rho, Phi' and dPhi'/dr are quintic polynomials: values at both ends, slopes there
-from the adiabatic equations, and slopes at two places between from the equations once more, with
-the cubic through the ends put in. Errors of the eigenfunctions fall as width^5. Gauss points in
-every cell integrate products of these; cells never reach across a density jump.
+xi_r, xi_h, p'/rho, Phi' and dPhi'/dr are polynomials of degree seven with the values that the mode
+list holds at the two ends, which obey the adiabatic equations at the ends and at four places
+between (`oscsolve.seismology.motion`). Gauss points in every cell integrate products of these.
+Errors fall as width^7. Intervals in which a mode turns by half a wave or more hold too little of
+it for anyone to rebuild it; `oscsolve.seismology.checks.coarse_points` tells where that matters.
+Cells never reach across a density jump.
 """
 
 from __future__ import annotations
@@ -16,7 +18,7 @@ import numpy as np
 
 from oscsolve.errors import InputError
 from oscsolve.pulsation.modeset import ModeSet
-from oscsolve.seismology.motion import PLACE, Motion, Wave, central_value, pieces, wave_of
+from oscsolve.seismology.motion import PLACES, Motion, Wave, pieces, wave_of
 from oscsolve.star.model import StarModel
 from oscsolve.star.profile import Profile, Structure
 
@@ -28,7 +30,7 @@ def _partial_weights(size: int) -> np.ndarray:
     return np.linalg.solve((point[:, None] ** power).T, integrals.T).T
 
 
-#: Gauss points per cell: with five, squares of quintics are off by less than the quintics are.
+#: Gauss points per cell: with five, squares of the polynomials are off by less than these are.
 _NODES = 5
 #: Integrals over [0, 1] from 0 to each Gauss point of the polynomial through all of them.
 _PARTIAL = _partial_weights(_NODES)
@@ -131,9 +133,7 @@ class Quadrature:
         self._fraction = (self.x - start[owner][:, None]) / width[owner][:, None]
         self.width = width
         self._ends = tuple(self.profile.at(x, interval) for x in ends)
-        self._between = tuple(
-            self.profile.at(start + place * width, interval) for place in (PLACE, 1.0 - PLACE)
-        )
+        self._between = tuple(self.profile.at(start + place * width, interval) for place in PLACES)
 
     def integral(self, f: np.ndarray) -> float:
         """Integral over the star of a function known at the Gauss points."""
@@ -195,10 +195,8 @@ class Quadrature:
         mode = self.motion_on_points(index)
         if not self._offset:
             return mode
-        degree = int(self.modes.degree[index])
-        return Motion(
-            *(np.append(central_value(c, degree, part), c) for part, c in enumerate(mode))
-        )
+        # `pieces` puts in what holds at the centre.
+        return Motion(*(np.append(0.0, column) for column in mode))
 
 
 def _cut(

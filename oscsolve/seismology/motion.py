@@ -14,11 +14,9 @@ import numpy as np
 from oscsolve.pulsation.modeset import ModeSet
 from oscsolve.star.profile import Structure
 
-#: Where in a cell the equations are used once more: here and at the same distance from the other
-#: end. At 0.4 the slopes of both corrections are well away from zero.
-PLACE = 0.4
-#: How often: every round gains a factor of about the phase in a cell over ten.
-_ROUNDS = 1
+#: Fractions of a cell where the adiabatic equations hold exactly, besides its two ends. Not the
+#: Lobatto points: there the slopes alone fix the rise, and values at both ends ask for too much.
+PLACES = (0.2, 0.4, 0.6, 0.8)
 
 
 class Motion(NamedTuple):
@@ -82,26 +80,22 @@ def slopes(wave: Wave, at: Structure, f: Motion) -> Motion:
 
 
 class Pieces(NamedTuple):
-    """Quintic polynomials in every interval, one tuple for each part of a motion.
+    """A motion in every interval of a model as polynomials in t, which runs from 0 to 1.
 
-    Coefficients of f0, f1, h f0', h f1' and of the two corrections, (intervals,) each.
+    Attributes
+    ----------
+    ends : (4, i, 5) f0, f1, h f0', h f1' of the five parts of a motion
+    inner : (k, i, 5) factors of t^2 (1-t)^2 (2t-1)^j, j < k, which leave the ends alone
     """
 
-    xi_r: tuple[np.ndarray, ...]
-    xi_h: tuple[np.ndarray, ...]
-    eta: tuple[np.ndarray, ...]
-    phi: tuple[np.ndarray, ...]
-    dphi: tuple[np.ndarray, ...]
+    ends: np.ndarray
+    inner: np.ndarray
 
     def at(self, t: np.ndarray, owner: np.ndarray) -> Motion:
         """The motion at fractions `t` (c, k) of the intervals `owner` (c,)."""
-        basis = [*cubic(t), *corrections(t)]
-        return Motion(
-            *(
-                sum(weight * value[owner, None] for weight, value in zip(basis, part, strict=True))
-                for part in self
-            )
-        )
+        factors = np.concatenate((self.ends, self.inner))[:, owner]
+        basis = np.stack((*cubic(t), *_bubbles(t)))
+        return Motion(*np.einsum("bck,bcp->pck", basis, factors))
 
 
 def pieces(
@@ -113,47 +107,51 @@ def pieces(
 ) -> Pieces:
     """Polynomials through a mode known at both ends of every interval.
 
+    They have the values given at the ends, and obey the adiabatic equations there and at the
+    `PLACES` between (collocation).
+
     Parameters
     ----------
     wave : the mode
     width : (i,) widths of the intervals
     left, right : structure and mode at the ends
-    between : structure at the fractions `PLACE` and 1 - `PLACE`
+    between : structure at the `PLACES`
     """
     (at0, f0), (at1, f1) = left, right
     d0, d1 = slopes(wave, at0, f0), slopes(wave, at1, f1)
     if at0.x[0] == 0.0:
-        d0 = _central_slopes(wave, d0, f1, d1, float(width[0]))
-    ends = zip(f0, f1, d0, d1, strict=True)
-    none = np.zeros_like(width)
-    parts = Pieces(*((v0, v1, width * s0, width * s1, none, none) for v0, v1, s0, s1 in ends))
-    for _ in range(_ROUNDS):
-        parts = _corrected(wave, width, parts, between)
-    return parts
-
-
-def _corrected(
-    wave: Wave, width: np.ndarray, parts: Pieces, between: tuple[Structure, ...]
-) -> Pieces:
-    """Polynomials with the slopes that the equations ask for at the two inner places."""
-    defects = []
-    for at, place in zip(between, (PLACE, 1.0 - PLACE), strict=True):
-        value = (*cubic(np.array(place)), *corrections(np.array(place)))
-        slope = cubic_slope(place)
-        inside = Motion(*(sum(w * c for w, c in zip(value, part, strict=True)) for part in parts))
-        defects.append(
-            [
-                width * wanted - sum(w * c for w, c in zip(slope, part[:4], strict=True))
-                for wanted, part in zip(slopes(wave, at, inside), parts, strict=True)
-            ]
-        )
-    even, odd = correction_slopes(PLACE)
-    return Pieces(
-        *(
-            (*part[:4], 0.5 * (first - second) / even, 0.5 * (first + second) / odd)
-            for part, first, second in zip(parts, *defects, strict=True)
-        )
+        f0, d0 = _with_centre(wave, f0, d0, f1, d1, float(width[0]))
+    h = width[:, None]
+    ends = np.stack(
+        [np.stack(f0, -1), np.stack(f1, -1), h * np.stack(d0, -1), h * np.stack(d1, -1)]
     )
+    count, parts = len(PLACES), len(Motion._fields)
+    matrix = np.empty((width.size, count, parts, count, parts))
+    right_side = np.empty((width.size, count, parts))
+    unit = np.eye(parts)
+    for row, (place, at) in enumerate(zip(PLACES, between, strict=True)):
+        system = h[..., None] * _system(wave, at)
+        value = np.einsum("b,bip->ip", np.stack(cubic(np.array(place))), ends)
+        slope = np.einsum("b,bip->ip", np.array(_cubic_slope(place)), ends)
+        right_side[:, row] = np.einsum("iqp,ip->iq", system, value) - slope
+        bubbles, rises = _bubbles(np.array(place)), _bubble_slopes(place)
+        for column in range(count):
+            matrix[:, row, :, column] = rises[column] * unit - bubbles[column] * system
+    size = count * parts
+    solved = np.linalg.solve(
+        matrix.reshape(-1, size, size), right_side.reshape(-1, size, 1)
+    ).reshape(-1, count, parts)
+    return Pieces(ends, np.moveaxis(solved, 1, 0))
+
+
+def _system(wave: Wave, at: Structure) -> np.ndarray:
+    """(i, 5, 5) matrices of the linear equations in `slopes`."""
+    zero, one = np.zeros_like(at.x), np.ones_like(at.x)
+    columns = []
+    for part in range(len(Motion._fields)):
+        unit = Motion(*(one if k == part else zero for k in range(len(Motion._fields))))
+        columns.append(np.stack(slopes(wave, at, unit), -1))
+    return np.stack(columns, -1)
 
 
 def cubic(t: np.ndarray) -> tuple[np.ndarray, ...]:
@@ -162,42 +160,40 @@ def cubic(t: np.ndarray) -> tuple[np.ndarray, ...]:
     return u * u * (1.0 + 2.0 * t), t * t * (3.0 - 2.0 * t), t * u * u, -t * t * u
 
 
-def cubic_slope(t: float) -> tuple[float, ...]:
+def _cubic_slope(t: float) -> tuple[float, ...]:
     """Derivatives of `cubic` by t."""
     u = 1.0 - t
     return -6.0 * t * u, 6.0 * t * u, u * (1.0 - 3.0 * t), t * (3.0 * t - 2.0)
 
 
-def corrections(t: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """t^2 (1-t)^2 and t^2 (1-t)^2 (2t-1): no value and no slope at either end."""
-    bump = (t * (1.0 - t)) ** 2
-    return bump, bump * (2.0 * t - 1.0)
+def _bubbles(t: np.ndarray) -> list[np.ndarray]:
+    """t^2 (1-t)^2 (2t-1)^j: no value and no slope at either end."""
+    return [(t * (1.0 - t)) ** 2 * (2.0 * t - 1.0) ** j for j in range(len(PLACES))]
 
 
-def correction_slopes(t: float) -> tuple[float, float]:
-    """Derivatives of `corrections` by t; the first is odd about the middle, the second even."""
-    product, away = t * (1.0 - t), 1.0 - 2.0 * t
-    return 2.0 * product * away, 2.0 * product * (product - away * away)
+def _bubble_slopes(t: float) -> list[float]:
+    """Derivatives of `_bubbles` by t."""
+    product, away = t * (1.0 - t), 2.0 * t - 1.0
+    return [
+        -2.0 * product * away * away**j + 2.0 * j * product**2 * away ** max(j - 1, 0)
+        for j in range(len(PLACES))
+    ]
 
 
-def central_value(values: np.ndarray, degree: int, part: int) -> float:
-    """Value at the centre of a part of the motion, for a model whose first point is at r > 0.
+def _with_centre(
+    wave: Wave, f0: Motion, d0: Motion, f1: Motion, d1: Motion, h: float
+) -> tuple[Motion, Motion]:
+    """Values and slopes at the left ends with those at the centre put in.
 
-    xi_r, xi_h and dPhi'/dr (parts 0, 1, 4) fall as r^(l-1) and are even for l = 1; the others
-    fall as r^l, but Phi' and p'/rho of radial motion do not vanish.
+    xi_r, xi_h and dPhi'/dr grow as r^|l-1|, p'/rho and Phi' as r^l: near the centre each part is
+    a + b r^2 where that power is 0, a r + b r^3 where it is 1, and nothing beyond.
     """
-    if degree == (1 if part in (0, 1, 4) else 0):
-        return float(values[0])
-    return 0.0
-
-
-def _central_slopes(wave: Wave, d0: Motion, f1: Motion, d1: Motion, h: float) -> Motion:
-    """Slopes with those at the centre put in: f = a r + b r^3 where f falls as r, else 0."""
-    parts = []
-    for name, slope, value, other in zip(Motion._fields, d0, f1, d1, strict=True):
-        linear = (0, 2) if name in ("xi_r", "xi_h", "dphi") else (1,)
-        if wave.degree in linear:
-            slope = slope.copy()
-            slope[0] = 0.5 * (3.0 * value[0] / h - other[0])
-        parts.append(slope)
-    return Motion(*parts)
+    values, rises = [], []
+    for name, value, rise, f, d in zip(Motion._fields, f0, d0, f1, d1, strict=True):
+        power = abs(wave.degree - 1) if name in ("xi_r", "xi_h", "dphi") else wave.degree
+        value, rise = value.copy(), rise.copy()
+        value[0] = f[0] - 0.5 * h * d[0] if power == 0 else 0.0
+        rise[0] = 0.5 * (3.0 * f[0] / h - d[0]) if power == 1 else 0.0
+        values.append(value)
+        rises.append(rise)
+    return Motion(*values), Motion(*rises)

@@ -208,13 +208,17 @@ def rotational_splitting(modes: ModeSet, rotation: Rotation | float) -> Splittin
     >>> import oscsolve
     >>> modes = oscsolve.solve_modes(oscsolve.polytrope(3), [1], (20, 60), unit="sigma2")
     >>> oscsolve.rotational_splitting(modes, 430.0).splitting.round(1).tolist()
-    [415.9, 423.6]
+    [415.3, 415.6, 416.9]
     """
     if not isinstance(rotation, Rotation):
         rotation = uniform_rotation(float(rotation))
+    return split_rows(modes, rotation, np.flatnonzero(modes.degree > 0))
+
+
+def split_rows(modes: ModeSet, rotation: Rotation, rows: np.ndarray) -> Splittings:
+    """Splittings of some nonradial modes, in the order of `rows`."""
     quadrature = Quadrature(modes, breaks=rotation.radius)
     rate = rotation.at(quadrature.x)
-    rows = np.flatnonzero(modes.degree > 0)
     beta, splitting = np.empty(rows.size), np.empty(rows.size)
     for place, row in enumerate(rows):
         sense, energy = _integrands(quadrature, int(row))

@@ -15,7 +15,7 @@ import numpy as np
 from oscsolve.errors import InputError
 from oscsolve.pulsation.modeset import ModeSet
 from oscsolve.seismology.integrals import point_structure
-from oscsolve.seismology.rotation import rotational_splitting, step_rotation
+from oscsolve.seismology.rotation import split_rows, step_rotation
 from oscsolve.star.model import StarModel
 
 #: Two kernels whose shares of the core differ by less than this say nothing about two rates.
@@ -126,9 +126,8 @@ def mean_rotation(
             modes.star, int(modes.degree[rows].min()), float(np.mean(modes.nu[rows]))
         )
     # The part of a splitting from the core is that of a core at 1 nHz in an envelope at rest.
-    found = rotational_splitting(modes, step_rotation(1.0, 0.0, radius))
-    place = np.searchsorted(found.row, rows)
-    beta, core = found.beta[place], found.splitting[place]
+    found = split_rows(modes, step_rotation(1.0, 0.0, radius), rows)
+    beta, core = found.beta, found.splitting
     design = np.column_stack((core, beta - core)) / measured.splitting_error[:, None]
     share = core / beta
     if np.ptp(share) < _LEAST_CONTRAST:
