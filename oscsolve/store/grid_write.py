@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
@@ -11,8 +10,8 @@ from pathlib import Path
 import h5py
 import numpy as np
 
-from oscsolve.errors import InputError
 from oscsolve.star.formats.files import replacing
+from oscsolve.star.formats.hdf5_file import new_hdf5
 from oscsolve.store import schema
 from oscsolve.store.rows import MODE_COLUMNS, SECOND_COLUMNS, GridRow, period_of
 from oscsolve.store.schema import Column
@@ -78,20 +77,16 @@ def write_grid(
     InputError
         The disk is full, or the folder cannot be written.
     """
-    with replacing(path, overwrite=True) as temporary:
-        try:
-            with h5py.File(temporary, "w") as file:
-                _write_root(file, header, shape, planned)
-                tables = _Tables(file, header, shape)
-                for batch in _batches(rows):
-                    tables.write(batch)
-                tables.check_full()
-        except RuntimeError as error:
-            # HDF5 has no OSError for what goes wrong while it closes a file.
-            raise InputError(f"{path}: cannot be written ({error}); check the disk") from error
-        # Renamed before its bytes reached the disk, a file can come out of a power cut empty.
-        with temporary.open("rb") as stream:
-            os.fsync(stream.fileno())
+    with (
+        replacing(path, overwrite=True) as temporary,
+        new_hdf5(temporary) as (file, disk),
+    ):
+        _write_root(file, header, shape, planned)
+        tables = _Tables(file, header, shape)
+        for batch in _batches(rows):
+            tables.write(batch)
+            disk.check()
+        tables.check_full()
 
 
 def _write_root(file: h5py.File, header: GridHeader, shape: GridShape, planned: int | None) -> None:

@@ -15,6 +15,7 @@ from oscsolve.pulsation.modeset import Eigenfunctions, ModeSet
 from oscsolve.star.findings import Finding
 from oscsolve.star.formats.files import replacing
 from oscsolve.star.formats.hdf5 import write_structure
+from oscsolve.star.formats.hdf5_file import new_hdf5
 from oscsolve.store import schema
 from oscsolve.store.schema import Column
 
@@ -48,7 +49,7 @@ def save_modes(modes: ModeSet, path: str | os.PathLike[str], *, overwrite: bool 
     True
     """
     target = Path(path)
-    with replacing(target, overwrite) as temporary, h5py.File(temporary, "w") as file:
+    with replacing(target, overwrite) as temporary, new_hdf5(temporary) as (file, _):
         _write_root(file, modes)
         columns = schema.MODES + (schema.SECOND_OPINION if modes.nu_second is not None else ())
         write_columns(file.create_group("modes"), "mode", _columns_of(modes, columns), columns)

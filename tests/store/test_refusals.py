@@ -3,6 +3,9 @@
 from __future__ import annotations
 
 import random
+import subprocess
+import sys
+from pathlib import Path
 
 import h5py
 import numpy as np
@@ -140,3 +143,29 @@ def test_a_flipped_byte_never_ends_in_a_traceback(path):
         except InputError:
             refused += 1
     assert refused > 0
+
+
+@pytest.mark.skipif(not Path("/proc").exists(), reason="needs a system with file size limits")
+@pytest.mark.parametrize("limit", [1000, 20_000, 100_000])
+def test_a_full_disk_is_one_line_and_keeps_the_old_file(path, limit):
+    """A real limit of the system on the size of files, which fails in the depths of HDF5."""
+    before = path.read_bytes()
+    script = (
+        "import resource, sys, oscsolve\n"
+        "modes = oscsolve.load_modes(sys.argv[1])\n"
+        "resource.setrlimit(resource.RLIMIT_FSIZE, (int(sys.argv[2]),) * 2)\n"
+        "try:\n"
+        "    oscsolve.save_modes(modes, sys.argv[1], overwrite=True)\n"
+        "except oscsolve.InputError as error:\n"
+        "    print(error)\n"
+    )
+    ended = subprocess.run(
+        [sys.executable, "-c", script, str(path), str(limit)],
+        capture_output=True,
+        text=True,
+        check=False,
+    )
+    assert (ended.returncode, ended.stderr) == (0, "")
+    assert "modes.h5: cannot be written (File too large)" in ended.stdout
+    assert path.read_bytes() == before
+    assert list(path.parent.iterdir()) == [path]

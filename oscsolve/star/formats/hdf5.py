@@ -19,6 +19,7 @@ import numpy as np
 from oscsolve.errors import InputError, ModelError
 from oscsolve.star.findings import Finding
 from oscsolve.star.formats.files import file_hash, replacing
+from oscsolve.star.formats.hdf5_file import new_hdf5
 from oscsolve.star.model import StarModel
 from oscsolve.version import __version__
 
@@ -127,7 +128,7 @@ def write(star: StarModel, path: Path, *, overwrite: bool = False) -> None:
     InputError
         The file exists and `overwrite` is false, or cannot be written.
     """
-    with replacing(path, overwrite) as temporary, h5py.File(temporary, "w") as file:
+    with replacing(path, overwrite) as temporary, new_hdf5(temporary) as (file, _):
         file.attrs["content"] = CONTENT
         file.attrs["schema"] = SCHEMA
         file.attrs["program_version"] = __version__
