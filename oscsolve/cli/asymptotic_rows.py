@@ -113,7 +113,7 @@ def _plain(value: float) -> str:
     return f"{value:.{_DIGITS}g}"
 
 
-def _with_error(value: float, error: float, numerical: float) -> tuple[str, str]:
+def with_error(value: float, error: float, numerical: float) -> tuple[str, str]:
     """A fitted value and its error, two digits of the error shown."""
     total = max(error, numerical)
     if not (math.isfinite(total) and total > 0.0):
@@ -129,10 +129,10 @@ def _sound(found: Asymptotics) -> Iterator[Row]:
             f"line through {fit.order.size} modes of l = {fit.degree}, {about}; error: scatter "
             f"(numerical {fit.separation_propagated:.0e})"
         )
-        value, error = _with_error(fit.separation, fit.separation_error, fit.separation_propagated)
+        value, error = with_error(fit.separation, fit.separation_error, fit.separation_propagated)
         yield Row(f"Delta nu_{fit.degree}", value, error, "uHz", remark)
     for fit in found.large_separations:
-        value, error = _with_error(fit.epsilon, fit.epsilon_error, fit.epsilon_propagated)
+        value, error = with_error(fit.epsilon, fit.epsilon_error, fit.epsilon_propagated)
         yield Row(
             f"epsilon_{fit.degree}",
             value,
@@ -168,7 +168,7 @@ def _sound(found: Asymptotics) -> Iterator[Row]:
 def _buoyancy(found: Asymptotics) -> Iterator[Row]:
     dips = {part.degree: part for part in found.period_spacings}
     for fit in found.period_spacing_fits:
-        value, error = _with_error(fit.spacing, fit.spacing_error, fit.spacing_propagated)
+        value, error = with_error(fit.spacing, fit.spacing_error, fit.spacing_propagated)
         yield Row(
             f"Delta Pi_{fit.degree}",
             value,
@@ -219,7 +219,7 @@ def _mixed(found: Asymptotics) -> Iterator[Row]:
             ),
         )
         for label, name, unit, remark in rows:
-            value, error = _with_error(
+            value, error = with_error(
                 getattr(fit, name),
                 getattr(fit, f"{name}_error"),
                 getattr(fit, f"{name}_propagated"),
@@ -229,14 +229,14 @@ def _mixed(found: Asymptotics) -> Iterator[Row]:
 
 
 def _scaled(found: Asymptotics) -> Iterator[Row]:
-    if found.effective_temperature is not None:
+    if found.nu_max is not None and found.effective_temperature is not None:
         yield Row("T_eff", f"{found.effective_temperature:.5g}", "", "K", "of the model")
     if found.nu_max is not None:
-        value, error = _with_error(found.nu_max, 0.05 * found.nu_max, 0.0)
+        value, error = with_error(found.nu_max, 0.05 * found.nu_max, 0.0)
         remark = "M R^-2 T_eff^-1/2 (Kjeldsen & Bedding 1995); error: 5 percent, common practice"
         yield Row("nu_max", value, error, "uHz", remark)
     if found.large_separation_scaled is not None:
         separation = found.large_separation_scaled
-        value, error = _with_error(separation, 0.02 * separation, 0.0)
+        value, error = with_error(separation, 0.02 * separation, 0.0)
         remark = "M^1/2 R^-3/2 (Kjeldsen & Bedding 1995); error: 2 percent, common practice"
         yield Row("Delta nu", value, error, "uHz", remark)

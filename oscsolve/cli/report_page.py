@@ -14,6 +14,7 @@ from typing import NamedTuple
 
 import numpy as np
 
+from oscsolve.cli.asymptotic_rows import with_error
 from oscsolve.cli.inspection import verdict
 from oscsolve.cli.markup import Html, formula, join, symbol, tag, void
 from oscsolve.cli.report_tables import (
@@ -22,7 +23,7 @@ from oscsolve.cli.report_tables import (
     census_table,
     findings_list,
     mode_table,
-    orders_table,
+    orders_tables,
     separations_table,
     star_table,
 )
@@ -141,23 +142,25 @@ def _facts(modes: ModeSet, found: Asymptotics) -> Iterator[tuple[object, object,
         yield symbol("nu_max"), f"{found.nu_max:.4g} {MICRO}", "scaled from the Sun"
     if found.large_separations:
         fit = found.large_separations[0]
-        value = f"{fit.separation:.5g} {MICRO}"
-        remark = f"\u00b1 {fit.separation_error:.1g}, line through l\u00a0=\u00a0{fit.degree}"
-        yield symbol("Delta nu"), value, remark
+        numbers = (fit.separation, fit.separation_error, fit.separation_propagated)
+        value, error = with_error(*numbers)
+        remark = f"\u00b1 {error}, line through l\u00a0=\u00a0{fit.degree}"
+        yield symbol("Delta nu"), f"{value} {MICRO}", remark
     elif np.isfinite(found.large_separation_integral):
         yield symbol("Delta nu"), f"{found.large_separation_integral:.5g} {MICRO}", "of the model"
     if found.mixed:
         first = found.mixed[0]
-        remark = f"\u00b1 {first.spacing_error:.1g}, mixed modes of l\u00a0=\u00a0{first.degree}"
-        yield symbol(f"Delta Pi_{first.degree}"), f"{first.spacing:.5g} s", remark
+        value, error = with_error(first.spacing, first.spacing_error, first.spacing_propagated)
+        remark = f"\u00b1 {error}, mixed modes of l\u00a0=\u00a0{first.degree}"
+        yield symbol(f"Delta Pi_{first.degree}"), f"{value} s", remark
     elif found.period_spacing_integral and np.isfinite(found.period_spacing_integral[0][1]):
         degree, spacing = found.period_spacing_integral[0]
         yield symbol(f"Delta Pi_{degree}"), f"{spacing:.5g} s", "integral of the model"
     degrees = ", ".join(str(degree) for degree in modes.census.degree)
     yield "modes listed", str(len(modes)), f"l = {degrees}"
     if modes.census.low.size:
-        band = f"{modes.census.low.min():.5g} to {modes.census.high.max():.5g}"
-        yield "band", band, MICRO
+        ends = (float(modes.census.low.min()), float(modes.census.high.max()))
+        yield "band", " to ".join(f"{v:.5g}" if abs(v) < 1e5 else f"{v:.0f}" for v in ends), MICRO
     if len(modes):
         with np.errstate(divide="ignore"):
             worst = float(np.max(modes.nu_error / np.abs(modes.nu)))
@@ -210,7 +213,7 @@ def _asymptotics(found: Asymptotics) -> Iterator[Html]:
     yield tag(
         "details",
         tag("summary", "All orders"),
-        orders_table(found),
+        orders_tables(found),
         tag("p", "In colour: a mixed mode stands for a p mode.", class_="soft"),
     )
 

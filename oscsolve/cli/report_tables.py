@@ -178,20 +178,28 @@ def _quantity(row: Row, place: Html | None = None) -> Html:
     )
 
 
-def orders_table(found: Asymptotics) -> Html:
-    """All separations and ratios by order; those with a mixed mode are marked."""
+def orders_tables(found: Asymptotics) -> Html:
+    """All separations and ratios by order, in tables that fit a sheet; mixed ones are marked."""
     parts = found.separations
-    orders = sorted({int(n) for part in parts.values() for n in part.order})
-    columns = {name: _cells_by_order(parts[name], orders) for name in parts}
+    groups = [
+        [name for name in parts if name.startswith(("large", "small", "five"))],
+        [name for name in parts if name.startswith(("ratio", "second"))],
+    ]
+    return join(_orders_table([parts[name] for name in group]) for group in groups if group)
+
+
+def _orders_table(parts: list[Separation]) -> Html:
+    orders = sorted({int(n) for part in parts for n in part.order})
+    columns = [_cells_by_order(part, orders) for part in parts]
     heads = [tag("th", symbol("n"), scope="col", class_="n")]
-    for name, part in parts.items():
+    for part in parts:
         unit = "" if part.unit == "1" else f" / {MICRO}"
-        heads.append(tag("th", symbol(COMBINATIONS[name][0]), unit, scope="col", class_="n"))
+        heads.append(tag("th", symbol(COMBINATIONS[part.name][0]), unit, scope="col", class_="n"))
     rows = [
-        tag("tr", tag("td", n, class_="n"), *(cells[place] for cells in columns.values()))
+        tag("tr", tag("td", n, class_="n"), *(cells[place] for cells in columns))
         for place, n in enumerate(orders)
     ]
-    table = tag("table", tag("thead", tag("tr", *heads)), tag("tbody", *rows))
+    table = tag("table", tag("thead", tag("tr", *heads)), tag("tbody", *rows), class_="all-orders")
     return tag("div", table, class_="box long")
 
 
