@@ -19,6 +19,7 @@ from oscsolve.version import __version__
 COMMANDS = {
     "modes": ("modes", "List the modes of one star, with a proof that none is missing."),
     "inspect": ("inspect", "Tell what a model holds and what is wrong or doubtful about it."),
+    "match": ("match", "Compare computed with observed modes, one star or a whole grid."),
     "split": ("split", "Split modes by slow rotation, and turn splittings into rotation."),
     "report": ("report", "Tell what the modes of one star say, as text or as one page."),
     "grid": ("grid", "List the modes of many models, on all cores or on a cluster."),

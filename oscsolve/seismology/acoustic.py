@@ -8,10 +8,11 @@ the pulsation of the envelope; inertia does.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Protocol
 
 import numpy as np
 
-from oscsolve.pulsation.modeset import ModeSet
+from oscsolve.pulsation.modeset import Census
 from oscsolve.seismology.frozen import freeze_arrays
 
 #: Excess of ln(inertia) over that of radial modes from which a mode counts as mixed.
@@ -23,6 +24,29 @@ _FOREIGN = 0.5
 _SMALL_SHARE = 0.02
 #: Highest degree for which a mixed mode stands for a p mode.
 _HIGHEST = 3
+
+
+class ModeColumns(Protocol):
+    """Columns of a mode list; a `ModeSet`, or one model of a grid store, has them."""
+
+    @property
+    def degree(self) -> np.ndarray: ...
+    @property
+    def order(self) -> np.ndarray: ...
+    @property
+    def n_p(self) -> np.ndarray: ...
+    @property
+    def n_g(self) -> np.ndarray: ...
+    @property
+    def nu(self) -> np.ndarray: ...
+    @property
+    def nu_error(self) -> np.ndarray: ...
+    @property
+    def sigma2(self) -> np.ndarray: ...
+    @property
+    def inertia(self) -> np.ndarray: ...
+    @property
+    def census(self) -> Census: ...
 
 
 @dataclass(frozen=True, eq=False)
@@ -48,7 +72,7 @@ class AcousticModes:
         freeze_arrays(self)
 
 
-def acoustic_modes(modes: ModeSet) -> AcousticModes:
+def acoustic_modes(modes: ModeColumns) -> AcousticModes:
     """The modes that count as p modes.
 
     Notes
@@ -63,7 +87,7 @@ def acoustic_modes(modes: ModeSet) -> AcousticModes:
     within half a large separation of it stands for it. No mode is taken where the band does not
     hold the whole stretch, nor for l > 3.
     """
-    excess = _inertia_excess(modes)
+    excess = inertia_excess(modes)
     row, order, mixed = [], [], []
     for degree in np.unique(modes.degree):
         rows = np.flatnonzero((modes.degree == degree) & (modes.sigma2 > 0.0))
@@ -87,7 +111,7 @@ def acoustic_modes(modes: ModeSet) -> AcousticModes:
     )
 
 
-def _inertia_excess(modes: ModeSet) -> np.ndarray:
+def inertia_excess(modes: ModeColumns) -> np.ndarray:
     """(m,) ln of inertia over that of radial modes of the same frequency.
 
     Without radial modes: infinite for modes with g nodes, 0 for the rest.
@@ -99,7 +123,7 @@ def _inertia_excess(modes: ModeSet) -> np.ndarray:
     return np.log(modes.inertia) - alike
 
 
-def _gravity_reach(modes: ModeSet, rows: np.ndarray, excess: np.ndarray) -> float:
+def _gravity_reach(modes: ModeColumns, rows: np.ndarray, excess: np.ndarray) -> float:
     """Highest frequency at which one degree has a mode with g nodes, or one next to it that
     shares its energy; 0 where there is none."""
     bearing = np.flatnonzero(modes.n_g[rows] > 0)
@@ -112,7 +136,7 @@ def _gravity_reach(modes: ModeSet, rows: np.ndarray, excess: np.ndarray) -> floa
     return float(modes.nu[rows[last]])
 
 
-def _stand_ins(modes: ModeSet, degree: int, free: np.ndarray) -> list[tuple[int, int]]:
+def _stand_ins(modes: ModeColumns, degree: int, free: np.ndarray) -> list[tuple[int, int]]:
     """(acoustic order, row) of those among the rows `free` that stand for p modes."""
     radial = np.flatnonzero((modes.degree == 0) & (modes.sigma2 > 0.0))
     if radial.size < 2 or free.size == 0:

@@ -4,9 +4,13 @@ from __future__ import annotations
 
 import os
 
+import h5py
+
 from oscsolve.errors import InputError
 from oscsolve.pulsation.modeset import ModeSet
+from oscsolve.star.formats.files import checked_path
 from oscsolve.star.model import StarModel
+from oscsolve.store import schema
 from oscsolve.store.grid_read import load_grid_modes
 from oscsolve.store.read import load_mode_file
 
@@ -41,3 +45,12 @@ def load_modes(
     if star is not None:
         raise InputError("star= goes with model=, for a grid store; a mode file holds its own star")
     return load_mode_file(path)
+
+
+def is_grid_store(path: str | os.PathLike[str]) -> bool:
+    """True for a grid store; False for any other file, readable or not."""
+    try:
+        with h5py.File(checked_path(path), "r") as opened:
+            return bool(opened.attrs.get("content") == schema.GRID_CONTENT)
+    except (OSError, InputError):
+        return False
