@@ -34,7 +34,7 @@ def report_lines(modes: ModeSet, found: Asymptotics) -> Iterator[str]:
             [f"n = {n}, {count} in all" for _, n, count in typical],
         )
     yield ""
-    yield "All orders: oscsolve report MODES.h5 --json; as a page with pictures: -o FILE.html"
+    yield "All orders: oscsolve report MODES.h5 --json; all of it as a page: -o FILE.html"
 
 
 def _where(found: Asymptotics) -> str:

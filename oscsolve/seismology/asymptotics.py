@@ -31,6 +31,8 @@ from oscsolve.star.profile import Profile
 
 #: Mixed modes are fitted within so many large separations of nu_max, where it lies in the list.
 _ORDERS_ABOUT_NU_MAX = 5.0
+#: Highest degree whose p modes are fitted by a line in order.
+_HIGHEST = 3
 #: A convective zone that reaches beyond this fraction of the radius is an envelope.
 _ENVELOPE = 0.95
 
@@ -50,7 +52,8 @@ class Asymptotics:
     acoustic_radius : s, int dr/c from the centre to the outermost point
     envelope_depth : s, acoustic depth of the bottom of the convective envelope, or None
     separations : name to `Separation`
-    large_separations : one `LargeSeparationFit` for each degree that has three p modes
+    large_separations : one `LargeSeparationFit` for each degree up to 3 that has three p modes;
+        at higher degrees the law holds for orders far above the degree only
     period_spacings : one `PeriodSpacings` for each degree that has pairs of g modes
     period_spacing_fits : one `PeriodSpacingFit` for each degree that has three g modes
     mixed : one `MixedModeFit` for each degree whose mixed modes follow the relation
@@ -93,7 +96,8 @@ def asymptotics(modes: ModeSet) -> Asymptotics:
     nu_max = nu_max_scaling(star)
     degrees = [int(degree) for degree in np.unique(modes.degree)]
     nonradial = [degree for degree in degrees if degree > 0]
-    large = [fit_large_separation(modes, degree) for degree in degrees]
+    low = [degree for degree in degrees if degree <= _HIGHEST]
+    large = [fit_large_separation(modes, degree) for degree in low]
     periods = [fit_period_spacing(modes, degree) for degree in nonradial]
     mixed = [_fit_mixed(modes, degree, nu_max, separation) for degree in nonradial]
     return Asymptotics(
