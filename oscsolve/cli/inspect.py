@@ -7,7 +7,14 @@ from pathlib import Path
 import click
 
 import oscsolve
-from oscsolve.cli.options import Band, BandType, DegreesType, gravitational_constant_option
+from oscsolve.cli.options import (
+    Band,
+    BandType,
+    DegreesType,
+    gravitational_constant_option,
+    overwrite_option,
+)
+from oscsolve.cli.outputs import check_output
 
 
 @click.command("inspect")
@@ -29,6 +36,14 @@ from oscsolve.cli.options import Band, BandType, DegreesType, gravitational_cons
 )
 @gravitational_constant_option
 @click.option(
+    "--plot",
+    "plot_path",
+    type=click.Path(path_type=Path),
+    metavar="FILE",
+    help="Draw the propagation diagram as PNG, PDF or SVG.",
+)
+@overwrite_option
+@click.option(
     "--json", "as_json", is_flag=True, help="Print one JSON document in place of the text."
 )
 def command(
@@ -36,6 +51,8 @@ def command(
     degrees: tuple[int, ...],
     band: Band | None,
     gravitational_constant: float | None,
+    plot_path: Path | None,
+    overwrite: bool,
     as_json: bool,
 ) -> int:
     """Tell what the star in MODEL (FGONG, column table or HDF5) is, and what is wrong with it.
@@ -43,6 +60,9 @@ def command(
     First the figures of the star as a whole, then the findings: defects (results will be wrong),
     doubts (they may mislead) and notes. Exit status 1 if there is a defect.
     """
+    if plot_path is not None:
+        suffixes = (".png", ".pdf", ".svg")
+        check_output(plot_path, overwrite=overwrite, suffixes=suffixes, inputs=(model,))
     # Loaded here so that --help does not wait for numpy and h5py.
     from oscsolve.cli.inspection import inspection_document, inspection_lines
 
@@ -53,6 +73,17 @@ def command(
         band=None if band is None else (band.first, band.second),
         unit="uHz" if band is None else band.unit,
     )
+    if plot_path is not None:
+        from oscsolve.plots.figure import save_figure
+        from oscsolve.plots.propagation import propagation_diagram
+
+        shown = tuple(degree for degree in degrees if degree > 0)[:3] or (1,)
+        save_figure(
+            plot_path,
+            lambda axes: propagation_diagram(axes, star, degrees=shown),
+            star.name,
+            overwrite=overwrite,
+        )
     if as_json:
         click.echo(inspection_document(star, found))
     else:

@@ -21,6 +21,7 @@ COMMANDS = {
     "inspect": ("inspect", "Tell what a model holds and what is wrong or doubtful about it."),
     "match": ("match", "Compare computed with observed modes, one star or a whole grid."),
     "split": ("split", "Split modes by slow rotation, and turn splittings into rotation."),
+    "plot": ("plot", "Draw one figure of a model or a mode list."),
     "report": ("report", "Tell what the modes of one star say, as text or as one page."),
     "grid": ("grid", "List the modes of many models, on all cores or on a cluster."),
     "build": ("build", "Make an analytic star and write it as a model file."),

@@ -3,12 +3,17 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import TYPE_CHECKING, Any
 
 import click
 
 import oscsolve
 from oscsolve.cli.options import overwrite_option
 from oscsolve.cli.outputs import check_output
+
+if TYPE_CHECKING:
+    from oscsolve.seismology.acoustic import ModeColumns
+    from oscsolve.seismology.match import Match
 
 _LAWS = ("none", "power", "cubic", "two-term", "lorentzian")
 
@@ -80,13 +85,13 @@ def command(
 
     observed = oscsolve.read_observed(observed_path)
     if is_grid_store(modes_path):
-        return _rank(modes_path, observed, law, measure, best, plot_path, as_json)
+        return _rank(modes_path, observed, law, measure, best, plot_path, as_json, overwrite)
     from oscsolve.cli.match_text import match_document, match_table
 
     modes = oscsolve.load_modes(modes_path)
     found = oscsolve.match_observed(modes, observed, surface=law)
     if plot_path is not None:
-        _draw(modes, found, plot_path, modes.star.name)
+        _draw(modes, found, plot_path, modes.star.name, overwrite)
     if as_json:
         click.echo(match_document(modes, found))
     else:
@@ -103,6 +108,7 @@ def _rank(
     best: int,
     plot_path: Path | None,
     as_json: bool,
+    overwrite: bool,
 ) -> int:
     from oscsolve.cli.match_text import rank_document, rank_table
     from oscsolve.cli.progress import Progress
@@ -118,7 +124,7 @@ def _rank(
         )
     if plot_path is not None:
         row = ranking.grid.row(int(ranking.order[0]))
-        _draw(row, match_row(row, observed, law), plot_path, row.name)
+        _draw(row, match_row(row, observed, law), plot_path, row.name, overwrite)
     if as_json:
         click.echo(rank_document(ranking, observed, law, measure, best))
     else:
@@ -127,8 +133,11 @@ def _rank(
     return 0
 
 
-def _draw(modes: object, found: object, path: Path, name: str) -> None:
+def _draw(modes: ModeColumns, found: Match, path: Path, name: str, overwrite: bool) -> None:
     from oscsolve.plots.figure import save_figure
     from oscsolve.plots.match import match_plot
 
-    save_figure(path, lambda axes: match_plot(axes, modes, found), title=name)  # type: ignore[arg-type]
+    def draw(axes: Any) -> Any:
+        return match_plot(axes, modes, found)
+
+    save_figure(path, draw, name, height=1.35, overwrite=overwrite)

@@ -121,10 +121,10 @@ def rank_table(
         "spread": [f"{value.spread:.2g}" for value in ranking.estimates.values()],
         "best model": [f"{value.best:.6g}" for value in ranking.estimates.values()],
     }
-    cells = {name: _padded(name, column) for name, column in texts.items()}
-    yield "#   " + "  ".join(name.rjust(len(column[0])) for name, column in cells.items())
-    for line in zip(*cells.values(), strict=True):
-        yield "#   " + "  ".join(line)
+    columns = {name: _padded(name, cells) for name, cells in texts.items()}
+    yield "#   " + "  ".join(name.rjust(len(cells[0])) for name, cells in columns.items())
+    for cells in zip(*columns.values(), strict=True):
+        yield "#   " + "  ".join(cells)
     yield f"# The estimates rest on {ranking.effective_models:.3g} models in effect."
     if ranking.effective_models < 3.0:
         yield "# That is too few for the spread to mean much: the grid is coarse beside the errors."

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import dataclass, field, fields
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, field, fields, replace
 from types import MappingProxyType
 from typing import Any
 
@@ -210,6 +210,25 @@ class ModeSet:
     def complete(self) -> bool:
         """True where as many modes are listed as counted, in every degree."""
         return self.census.closes
+
+    def only(self, degrees: Iterable[int]) -> ModeSet:
+        """The part of the list and of the census that belongs to some degrees."""
+        wanted = np.array(sorted({int(degree) for degree in degrees}))
+        rows = np.isin(self.degree, wanted)
+        kept = np.isin(self.census.degree, wanted)
+        census = Census(*(getattr(self.census, item.name)[kept] for item in fields(Census)))
+        columns = ("degree", "order", "n_p", "n_g", "kind", "nu", "nu_error", "sigma2", "inertia")
+        second = () if self.nu_second is None else ("nu_second", "nu_second_error")
+        eigen = self.eigenfunctions
+        if eigen is not None:
+            parts = (getattr(eigen, item.name)[rows] for item in fields(Eigenfunctions)[1:])
+            eigen = Eigenfunctions(eigen.radius, *parts)
+        return replace(
+            self,
+            **{name: getattr(self, name)[rows] for name in (*columns, *second)},
+            census=census,
+            eigenfunctions=eigen,
+        )
 
     def eigenfunction(self, index: int) -> Eigenfunction:
         """The eigenfunction of mode `index`, on the points of the model.

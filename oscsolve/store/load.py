@@ -49,8 +49,17 @@ def load_modes(
 
 def is_grid_store(path: str | os.PathLike[str]) -> bool:
     """True for a grid store; False for any other file, readable or not."""
+    return _content(path) == schema.GRID_CONTENT
+
+
+def is_mode_file(path: str | os.PathLike[str]) -> bool:
+    """True for the mode list of one star; False for any other file, readable or not."""
+    return _content(path) == schema.CONTENT
+
+
+def _content(path: str | os.PathLike[str]) -> str:
     try:
         with h5py.File(checked_path(path), "r") as opened:
-            return bool(opened.attrs.get("content") == schema.GRID_CONTENT)
+            return str(opened.attrs.get("content", ""))
     except (OSError, InputError):
-        return False
+        return ""
