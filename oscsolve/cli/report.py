@@ -18,8 +18,8 @@ from oscsolve.cli.outputs import check_output
     "--out",
     type=click.Path(path_type=Path),
     metavar="FILE.html",
-    help="Write a page that needs no other file and no network: asymptotic quantities, "
-    "the list, the star and its findings, the census, and how to make it again.",
+    help="Write a page that needs no other file and no network: pictures, asymptotic "
+    "quantities, the list, the star and its findings, the census, and how to make it again.",
 )
 @click.option(
     "--json",
@@ -57,11 +57,13 @@ def command(modes_path: Path, out: Path | None, as_json: bool, overwrite: bool) 
 
 
 def _page(modes: oscsolve.ModeSet, found: oscsolve.Asymptotics, path: Path) -> str:
-    from oscsolve.cli.report_page import report_page
+    from oscsolve.cli.report_page import Picture, report_page
+    from oscsolve.plots.gallery import gallery
 
     low, high = modes.census.low, modes.census.high
     band = (float(low.min()), float(high.max())) if low.size and low.min() > 0.0 else None
     inspection = oscsolve.inspect_model(
         modes.star, degrees=[int(degree) for degree in modes.census.degree], band=band
     )
-    return report_page(modes, found, inspection, file_name=path.name)
+    pictures = [Picture(plate.title, plate.caption, plate.svg()) for plate in gallery(modes)]
+    return report_page(modes, found, inspection, file_name=path.name, pictures=pictures)

@@ -82,8 +82,8 @@ def _draw_modes(
     rows = np.flatnonzero(np.isin(modes.degree, degrees) & (modes.nu > 0.0))
     if rows.size == 0:
         rows = np.flatnonzero(modes.nu > 0.0)
-    nodes = int(np.sum(modes.n_p[rows] + modes.n_g[rows]))
-    step = max(-(-rows.size // _MOST_MODES), -(-nodes // _MOST_NODES), 1)
+    marks = int(np.sum(modes.n_p[rows] + modes.n_g[rows]))
+    step = max(-(-rows.size // _MOST_MODES), -(-marks // _MOST_NODES), 1)
     rows = rows[:: min(step, max(rows.size // 3, 1))]
     for row in rows:
         degree, nu = int(modes.degree[row]), float(modes.nu[row])

@@ -186,6 +186,12 @@ def test_nothing_on_the_page_points_elsewhere(page_of, lantern_file):
     assert any(policy.startswith("default-src 'none'") for policy in policies)
 
 
+def test_pictures_that_suit_the_star_are_inside(page_of, lantern_file):
+    page = page_of(lantern_file)
+    titles = re.findall(r'<img alt="([^"]+)" src="data:image/svg\+xml;base64,', page)
+    assert {"Where waves propagate", "Frequencies folded", "Inertia"} <= set(titles)
+
+
 def test_the_command_on_the_page_makes_the_same_list(run, tmp_path, polytrope_file, monkeypatch):
     monkeypatch.chdir(tmp_path)
     asked = ("--degrees", "0-1,3", "--band", "2:60sigma2", "--tolerance", "1e-9", "--cowling")

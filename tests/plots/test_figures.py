@@ -12,6 +12,7 @@ from oscsolve import InputError
 from oscsolve.plots import echelle, eigenfunction, inertia, kernel, propagation, spacing
 from oscsolve.plots.coordinate import Coordinate
 from oscsolve.plots.figure import make_figure, picture, save_figure
+from oscsolve.plots.gallery import gallery
 from oscsolve.plots.match import match_plot
 from oscsolve.plots.style import colour, marker
 
@@ -183,3 +184,12 @@ def test_files_have_the_format_of_their_ending_and_never_change(tmp_path, modes,
         save_figure(tmp_path / f"a{ending}", draw)
     with pytest.raises(InputError, match="must end in .png, .pdf, .svg"):
         save_figure(tmp_path / "a.jpg", draw)
+
+
+def test_the_gallery_holds_what_suits_the_list(modes):
+    full = [plate.title for plate in gallery(modes)]
+    assert "Where waves propagate" in full and "Inertia" in full
+    assert "What rotational splittings sense" in full
+    radial = [plate.title for plate in gallery(modes.only([0]))]
+    assert "Frequencies folded" in radial and "Period spacing" not in radial
+    assert all(plate.svg().startswith(b"<?xml") for plate in gallery(modes.only([0])))
