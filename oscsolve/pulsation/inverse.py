@@ -10,9 +10,10 @@ One step solves A(lam) (q, y) = dT/d(q, y) at the previous vector and sets lam <
 Rayleigh quotient: it converges from anywhere and cubically near a mode. What lies on top of the
 star is not linear in lam; the zero of S of the new vector is found there by Newton's rule. The
 step also tells how far it may still be from the mode: with theta the angle between the old and
-the new vector in the metric of T, the residual of the new one is sin(theta)/sqrt(2 T), and the
-distance to the eigenvalue is at most its square over the gap to all others (Temple 1928, Kato
-1949). Eliminating y gives the matrix of `sweep`, and with y0 the previous y
+the new vector in the metric of T, the residual of the new one is sin(theta) times the old norm
+over the new one, an eigenvalue lies within it (Weinstein 1934), and the distance to that is at
+most the square of the residual over the gap to all others (Temple 1928, Kato 1949). Eliminating
+y gives the matrix of `sweep`, and with y0 the previous y
 
     y = (e + b0 z + b0 y0)/(lam B11),     p1 = lam y - z - y0,
 
@@ -321,7 +322,7 @@ def _quotient(action, lam, mu, vector, swing, before, step, residual, noise):
         cosine2 = (total[j] + form) ** 2 / (before[j] * (energy[j] + kinetic))
         step[j] = _zero_of_action(action, lam[j], a, b, total[j], energy[j])
         energy[j] += kinetic
-        residual[j] = np.sqrt(max(1.0 - cosine2, 0.0) / abs(energy[j]))
+        residual[j] = np.sqrt(max(1.0 - cosine2, 0.0) * before[j] / abs(energy[j]))
         noise[j] = EPSILON * (abs(lam[j]) + size[j] / abs(energy[j]))
         energy[j] = 1.0 / np.sqrt(abs(energy[j]))
     for i in range(base + dof):

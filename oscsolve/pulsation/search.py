@@ -289,7 +289,7 @@ def _iterate(
         slack = np.maximum(slack, 3.0 * scale * np.where(step < _STALLED, step, 0.0))
         outside = (new < low - slack) | (new > high + slack) | ~np.isfinite(new)
         gap = np.minimum(new - brackets.low[modes], brackets.high[modes] - new)
-        vector_error = work.residual / np.maximum(gap, 1e-300)
+        vector_error = work.residual / np.maximum(gap, 1e-15 * scale)
         left = work.residual * vector_error
         settled = (left <= accuracy.value * scale) & (vector_error <= accuracy.vector)
         stalled = (step < _STALLED) & (step > 0.5 * last) & (step < 1e3 * work.noise / scale)

@@ -187,7 +187,7 @@ def test_nothing_on_the_page_points_elsewhere(page_of, lantern_file):
 
 
 def test_pictures_that_suit_the_star_are_inside(page_of, lantern_file):
-    page = page_of(lantern_file)
+    page = page_of(lantern_file).read_text(encoding="utf-8")
     titles = re.findall(r'<img alt="([^"]+)" src="data:image/svg\+xml;base64,', page)
     assert {"Where waves propagate", "Frequencies folded", "Inertia"} <= set(titles)
 

@@ -224,3 +224,9 @@ def test_modes_of_a_similar_star_change_nothing_but_the_way():
         assert led.complete and np.array_equal(led.order, plain.order)
         assert np.all(np.abs(led.nu - plain.nu) <= plain.nu_error)
         assert led.options["similar_star_given"] and not plain.options["similar_star_given"]
+
+
+def test_high_bands_of_radial_modes_raise_no_warning():
+    """Regression: iterates outside their fences once overflowed in the bound of the error."""
+    modes = solve_modes(polytrope(3), [0], (2e4, 3e4), unit="sigma2")
+    assert modes.complete and len(modes) > 20
