@@ -10,13 +10,14 @@ import contextlib
 import logging
 import math
 import multiprocessing
+import multiprocessing.connection
 import os
 import queue
 import signal
 import threading
 import time
 from collections import deque
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from concurrent.futures import BrokenExecutor, CancelledError, Future, ProcessPoolExecutor
 from dataclasses import dataclass
 from typing import Any, Protocol
@@ -36,6 +37,8 @@ _HELD = 2
 _MOST_DEATHS = 2
 #: Seconds between two looks at how many workers a cluster has, and between two complaints.
 _LOOK_AGAIN, _COMPLAIN = 5.0, 30.0
+#: Seconds that a worker has to end.
+_FAREWELL = 5.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -92,8 +95,6 @@ class OwnWorkers:
         self._reports: deque[Report] = deque()
         self._deaths: dict[str, int] = {}
         self._places = [_Place() for _ in range(workers)]
-        self._context = multiprocessing.get_context("spawn")
-        _refuse_recursion()
         try:
             # Compiled code that is missing is made by the first worker and found by the others.
             self._start(0, settings if compile_is_due() else None)
@@ -127,31 +128,23 @@ class OwnWorkers:
 
     def stop(self) -> None:
         for place in self._places:
-            if place.executor is not None:
-                place.executor.shutdown(wait=False, cancel_futures=True)
-            if place.pid and place.held:
-                with contextlib.suppress(OSError):
-                    os.kill(place.pid, signal.SIGTERM)
+            place.stop(at_once=bool(place.held))
         for place in self._places:
-            if place.executor is not None:
-                place.executor.shutdown(wait=True)
-                place.executor = None
+            place.wait()
 
     def _done_within(self, timeout: float | None) -> _Held:
         return self._done.get(timeout=timeout)
 
     def _start(self, number: int, warm_up: Settings | None) -> None:
-        place = self._places[number]
-        place.generation += 1
-        place.pid = 0
-        place.executor = ProcessPoolExecutor(1, mp_context=self._context, initializer=_settle_in)
+        self._places[number].start()
         self._submit(number, None, introduce, warm_up)
 
     def _submit(self, number: int, planned: Planned | None, call: Any, *arguments: Any) -> None:
         place = self._places[number]
         assert place.executor is not None
         try:
-            future = place.executor.submit(call, *arguments)
+            with _deaf():
+                future = place.executor.submit(call, *arguments)
         except BrokenExecutor as error:
             # The worker died while it was idle, and nobody has noticed yet.
             future = Future()
@@ -173,7 +166,6 @@ class OwnWorkers:
         if held.planned is None:
             if error is not None:
                 raise error
-            _, place.pid = held.future.result()
         elif error is not None:
             self._reports.append(Report(held.planned, None, _worded(error)))
         else:
@@ -183,8 +175,7 @@ class OwnWorkers:
         """A worker died: the model it was busy with is tried once more, the others again."""
         place = self._places[number]
         lost, place.held = place.held, deque()
-        if place.executor is not None:
-            place.executor.shutdown(wait=False)
+        place.stop(at_once=True)
         busy = lost[0].planned
         if busy is None:
             place.failed_starts += 1
@@ -208,6 +199,19 @@ class OwnWorkers:
                 self.give(number, held.planned)
 
 
+class _Context(multiprocessing.context.SpawnContext):
+    """Starts processes and remembers them: an executor does not say which are its own."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        self.processes: list[Any] = []
+
+    def Process(self, *arguments: Any, **keywords: Any) -> Any:  # type: ignore[override]
+        process = multiprocessing.context.SpawnProcess(*arguments, **keywords)
+        self.processes.append(process)
+        return process
+
+
 class _Place:
     """One worker process and the models it holds, oldest first."""
 
@@ -216,7 +220,31 @@ class _Place:
         self.held: deque[_Held] = deque()
         self.generation = 0
         self.failed_starts = 0
-        self.pid = 0
+        self._context = _Context()
+
+    def start(self) -> None:
+        """A process that is new."""
+        self.generation += 1
+        self._context = _Context()
+        self.executor = ProcessPoolExecutor(1, mp_context=self._context, initializer=_settle_in)
+
+    def stop(self, *, at_once: bool) -> None:
+        """End the process, at once or when it is idle."""
+        if self.executor is not None:
+            self.executor.shutdown(wait=False, cancel_futures=True)
+        self.executor = None
+        if at_once:
+            for process in self._context.processes:
+                with contextlib.suppress(OSError, ValueError):
+                    process.terminate()
+
+    def wait(self) -> None:
+        """Wait until the process is gone."""
+        sentinels = [process.sentinel for process in self._context.processes if process.pid]
+        multiprocessing.connection.wait(sentinels, _FAREWELL)
+        for process in self._context.processes:
+            with contextlib.suppress(OSError, ValueError):
+                process.kill()
 
 
 class Executor:
@@ -328,13 +356,29 @@ def _worded(error: BaseException) -> str:
     return f"{type(error).__name__}: {text}" if text else type(error).__name__
 
 
-def _refuse_recursion() -> None:
+def refuse_recursion() -> None:
     """A script without a guard runs again in each worker that it starts; end that at once."""
     if getattr(multiprocessing.current_process(), "_inheriting", False):
         raise InputError(
             "solve_grid starts processes, which import this script again: call it under "
             "'if __name__ == \"__main__\":'"
         )
+
+
+@contextlib.contextmanager
+def _deaf() -> Iterator[None]:
+    """Hold interrupts back for a moment: processes started in it never hear them.
+
+    A handler set by the new process itself would come too late for one that is just importing.
+    """
+    if not hasattr(signal, "pthread_sigmask"):
+        yield
+        return
+    before = signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGINT})
+    try:
+        yield
+    finally:
+        signal.pthread_sigmask(signal.SIG_SETMASK, before)
 
 
 def _settle_in() -> None:

@@ -11,7 +11,7 @@ from pathlib import Path
 from typing import Any
 
 from oscsolve.errors import InputError
-from oscsolve.grid.crew import Crew, Executor, OwnWorkers, Report
+from oscsolve.grid.crew import Crew, Executor, OwnWorkers, Report, refuse_recursion
 from oscsolve.grid.deal import Dealer
 from oscsolve.grid.plan import GridModel, Planned, plan_models
 from oscsolve.grid.work import Settings, failed_row, file_stamp
@@ -171,6 +171,8 @@ def solve_grid(
     settings = checked_settings(
         degrees, band, unit, gravity, surface, tolerance, verify, gravitational_constant, knobs
     )
+    if executor is None:
+        refuse_recursion()
     if workers is not None and workers < 1:
         raise InputError(f"workers must be at least 1; got {workers}")
     path = Path(store)
