@@ -174,7 +174,15 @@ def _executor(address: str | None) -> Iterator[Any]:
     from oscsolve.grid.cluster import cluster
 
     with cluster(address) as client:
+        _quiet("distributed", "tornado")
         yield client
+
+
+def _quiet(*packages: str) -> None:
+    """Keep the logs of packages from the terminal: what goes wrong is told in one line, by us."""
+    for name in list(logging.root.manager.loggerDict):
+        if name.partition(".")[0] in packages:
+            logging.getLogger(name).setLevel(logging.CRITICAL + 1)
 
 
 def _tell(summary: GridSummary) -> int:

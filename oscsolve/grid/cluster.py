@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import contextlib
-import logging
 from collections.abc import Iterator
 from typing import Any
 
@@ -31,8 +30,6 @@ def cluster(address: str) -> Iterator[Any]:
             "a cluster needs dask.distributed, which is not installed here: "
             "pip install 'oscsolve[cluster]'"
         ) from error
-    # What is wrong with the connection is told in one line, by us.
-    logging.getLogger("distributed").setLevel(logging.CRITICAL)
     try:
         client = Client(address, timeout=_PATIENCE, set_as_default=False)
     except (OSError, ValueError, RuntimeError) as error:

@@ -11,9 +11,11 @@ from pathlib import Path
 from typing import Any
 
 from oscsolve.errors import InputError
-from oscsolve.grid.crew import Crew, Executor, OwnWorkers, Report, refuse_recursion
+from oscsolve.grid.crew import Crew, Report
 from oscsolve.grid.deal import Dealer
+from oscsolve.grid.executor import Executor
 from oscsolve.grid.plan import GridModel, Planned, plan_models
+from oscsolve.grid.processes import OwnWorkers, refuse_recursion
 from oscsolve.grid.work import Settings, failed_row, file_stamp
 from oscsolve.pulsation.options import SolveOptions
 from oscsolve.pulsation.request import SURFACE, check_request
