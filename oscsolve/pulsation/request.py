@@ -104,7 +104,6 @@ def recorded_options(request: Request, band_chosen: bool) -> dict[str, object]:
         "surface": request.surface,
         "tolerance": request.tolerance,
         "verify": request.verify,
-        "similar_star_given": bool(request.guesses),
         "stages": request.options.stages or "chosen",
         "phase_per_cell": request.options.phase_per_cell or "chosen",
         "cells_factor": request.options.cells_factor,
