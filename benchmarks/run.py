@@ -1,18 +1,33 @@
-"""Runs the benchmarks of this folder once and prints a table: best of five."""
+"""Runs the benchmarks of this folder once and prints a table: best of five.
+
+    python benchmarks/run.py [NAME...]
+
+NAME is a class, such as DemoStar; without any, all are run.
+"""
 
 from __future__ import annotations
 
+import sys
 import time
 
+import bench_grid
 import bench_solve
 
 
 def main() -> None:
-    for case in (bench_solve.Sweep, bench_solve.DemoStar, bench_solve.Polytrope):
+    cases = [
+        case
+        for module in (bench_solve, bench_grid)
+        for case in vars(module).values()
+        if isinstance(case, type) and case.__module__ == module.__name__
+        if not case.__name__.startswith("_") and (not sys.argv[1:] or case.__name__ in sys.argv)
+    ]
+    for case in cases:
         for parameter in getattr(case, "params", (None,)):
             arguments = () if parameter is None else (parameter,)
             bench = case()
-            bench.setup(*arguments)
+            if hasattr(bench, "setup"):
+                bench.setup(*arguments)
             print(f"{case.__name__} {parameter if arguments else ''}")
             for name in sorted(vars(case)):
                 if name.startswith("time_"):

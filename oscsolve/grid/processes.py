@@ -59,8 +59,10 @@ class OwnWorkers:
         self._places = [_Place() for _ in range(workers)]
         try:
             # Compiled code that is missing is made by the first worker and found by the others.
-            self._start(0, settings if compile_is_due() else None)
-            self._meet(self._done_within(None))
+            due = compile_is_due()
+            self._start(0, settings if due else None)
+            if due:
+                self._meet(self._done_within(None))
             for place in range(1, workers):
                 self._start(place, None)
         except BaseException:

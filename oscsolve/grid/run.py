@@ -256,7 +256,7 @@ class _Run:
     open_crew: Callable[[], Crew]
     total: int | None
     progress: Callable[[GridProgress], None] | None
-    order: list[str] = field(default_factory=list)
+    order: dict[str, None] = field(default_factory=dict)
     solved: int = 0
     kept: int = 0
     failed_now: int = 0
@@ -279,15 +279,12 @@ class _Run:
 
     def _to_do(self, plan: Iterator[Planned]) -> Iterator[Planned]:
         """Models that have no row yet; remembers the order of all."""
-        known = set(self.journal.entries)
-        seen: set[str] = set()
         changed = 0
         for planned in plan:
-            if planned.key in seen:
+            if planned.key in self.order:
                 self.repeated += 1
                 continue
-            seen.add(planned.key)
-            self.order.append(planned.key)
+            self.order[planned.key] = None
             entry = self.journal.entries.get(planned.key)
             if entry is None:
                 yield planned
@@ -302,7 +299,7 @@ class _Run:
             self.notes.append(f"{self.repeated} model(s) came twice and were solved once")
         if changed:
             self.notes.append(f"{changed} model file(s) had changed and were solved again")
-        strangers = len(known - seen)
+        strangers = sum(key not in self.order for key in self.journal.entries)
         if strangers:
             self.notes.append(
                 f"{strangers} row(s) of models that were not asked for this time stand at the end"

@@ -13,7 +13,7 @@ import contextlib
 import json
 import os
 import zlib
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import asdict, dataclass, fields
 from pathlib import Path
 from typing import Any
@@ -136,7 +136,7 @@ class Journal:
         except OSError as error:
             raise self._failed(error) from error
 
-    def publish(self, order: list[str], planned: int | None, *, eigenfunctions: bool) -> None:
+    def publish(self, order: Iterable[str], planned: int | None, *, eigenfunctions: bool) -> None:
         """Make the HDF5 store anew from the rows.
 
         Parameters
