@@ -30,10 +30,13 @@ from oscsolve.star.profile import Profile
 #: sides between meshes.
 _MARGIN = 2e-3
 _MOST_ROUNDS = 8
-#: Modes of one degree that are held in memory with their vectors.
-_MODES_AT_ONCE = 300
+#: Modes of one degree that are held in memory with their vectors: at most so many, and at most so
+#: many bytes of them, about 400 bytes to a mode and cell (s = 4, vectors, starts and workspace).
+_MODES_AT_ONCE, _BYTES_AT_ONCE, _BYTES_PER_CELL = 300, 1_500_000_000, 400
 #: Time that a mode takes per cell, by Gauss points: two passes and a step of inverse iteration.
 _COST = {3: 1.0, 4: 1.6}
+#: Phase per cell of meshes at the default tolerance, radian.
+_COARSEST = 0.45
 #: Gauss points on the rough mesh, and how well its modes need to be known.
 _ROUGH_STAGES = 3
 _ROUGH_ACCURACY = Accuracy(value=1e-13, vector=1e-9)
@@ -191,7 +194,9 @@ def sub_bands(profile: Profile, ground: Ground, problem: Problem) -> list[Proble
     mesh = rough_mesh(ground, problem.degree, (low, high))
     coordinate = PhaseCoordinate(profile, mesh, problem.degree, low, high)
     expected = coordinate.phase[-1] - coordinate.phase[0]
-    parts = int(np.ceil(expected / _MODES_AT_ONCE))
+    cells = ground.mesh.size + np.sum(ground.phase(problem.degree, (low, high))) / _COARSEST
+    at_once = min(_MODES_AT_ONCE, max(20.0, _BYTES_AT_ONCE / (_BYTES_PER_CELL * cells)))
+    parts = int(np.ceil(expected / at_once))
     if parts <= 1:
         return [problem]
     edges = [low, *coordinate.between(low, high, parts), high]
