@@ -24,7 +24,7 @@ from oscsolve.errors import InputError
 from oscsolve.grid.crew import HELD, MOST_DEATHS, Report, worded
 from oscsolve.grid.plan import Planned
 from oscsolve.grid.work import Settings, introduce, solve_planned
-from oscsolve.pulsation.cache import compile_is_due
+from oscsolve.pulsation.cache import compile_may_be_due
 
 _log = logging.getLogger(__name__)
 
@@ -59,7 +59,7 @@ class OwnWorkers:
         self._places = [_Place() for _ in range(workers)]
         try:
             # Compiled code that is missing is made by the first worker and found by the others.
-            due = compile_is_due()
+            due = compile_may_be_due()
             self._start(0, settings if due else None)
             if due:
                 self._meet(self._done_within(None))

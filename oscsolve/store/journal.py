@@ -12,6 +12,7 @@ from __future__ import annotations
 import contextlib
 import json
 import os
+import re
 import zlib
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import asdict, dataclass, fields
@@ -326,6 +327,7 @@ def open_journal(store: Path, header: GridHeader, *, overwrite: bool) -> Journal
         The store was begun with other options or another version, or is no grid store.
     """
     journal = Journal(store, header)
+    _sweep(store)
     if overwrite:
         journal.begin()
     elif journal.path.exists():
@@ -337,6 +339,15 @@ def open_journal(store: Path, header: GridHeader, *, overwrite: bool) -> Journal
     else:
         journal.begin()
     return journal
+
+
+def _sweep(store: Path) -> None:
+    """Remove what a killed writer of this store left under a temporary name, see `replacing`."""
+    ours = re.compile(rf"\.{re.escape(store.name)}(\.journal)?\.[a-z0-9_]{{8}}\.tmp")
+    with contextlib.suppress(OSError):
+        for entry in list(store.parent.iterdir()):
+            if ours.fullmatch(entry.name):
+                entry.unlink()
 
 
 def check_same_run(

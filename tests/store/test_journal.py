@@ -4,6 +4,9 @@ from __future__ import annotations
 
 import os
 import random
+import signal
+import subprocess
+import sys
 from dataclasses import replace
 
 import numpy as np
@@ -224,12 +227,40 @@ def test_a_full_disk_keeps_the_rows_before(store, rows, monkeypatch):
         assert journal.notes == []
 
 
+@pytest.mark.skipif(not hasattr(signal, "SIGKILL"), reason="the system has no SIGKILL")
+def test_a_writer_killed_within_the_store_leaves_the_old_one_and_no_litter(store, rows):
+    fill(store, rows)
+    with open_journal(store, HEADER, overwrite=False) as journal:
+        journal.publish(list(journal.entries)[:3], None, eigenfunctions=False)
+    before = store.read_bytes()
+    script = (
+        "import os, pathlib, signal, sys\n"
+        "from oscsolve.store import grid_write\n"
+        "from oscsolve.store.journal import *\n"
+        "store = pathlib.Path(sys.argv[1])\n"
+        "header = GridHeader({'gravity': 'full', 'band_first': None}, (0, 1), '0.1.0')\n"
+        "grid_write._Tables.check_full = lambda self: os.kill(os.getpid(), signal.SIGKILL)\n"
+        "with open_journal(store, header, overwrite=False) as journal:\n"
+        "    journal.publish(list(journal.entries), 10, eigenfunctions=True)\n"
+    )
+    ended = subprocess.run([sys.executable, "-c", script, os.fspath(store)], check=False)
+    assert ended.returncode == -signal.SIGKILL
+    assert store.read_bytes() == before
+    assert len(list(store.parent.iterdir())) == 3
+    (store.parent / ".grid.h5.other.h5.abcdefgh.tmp").touch()
+    with open_journal(store, HEADER, overwrite=False) as journal:
+        assert_rows(journal, rows)
+    # What belongs to another store is left alone.
+    assert sorted(entry.name for entry in store.parent.iterdir()) == [
+        ".grid.h5.other.h5.abcdefgh.tmp",
+        "grid.h5",
+        "grid.h5.journal",
+    ]
+
+
 @pytest.mark.skipif(not os.path.exists("/proc"), reason="needs a system with file size limits")
 def test_a_store_that_does_not_fit_leaves_the_old_one_and_the_journal(store, rows):
     """A real limit of the system on the size of files, which fails in the depths of HDF5."""
-    import subprocess
-    import sys
-
     fill(store, rows)
     with open_journal(store, HEADER, overwrite=False) as journal:
         journal.publish(list(journal.entries)[:3], None, eigenfunctions=False)
