@@ -161,6 +161,10 @@ def _census(modes: ModeSet) -> Iterator[str]:
             f"# {relabelled} mode{'s' * (relabelled != 1)} whose node counts disagree with the "
             "order; n follows the spectrum and holds"
         )
+        yield (
+            "# (nodes can fail for l >= 2 in condensed stars, and for l = 1 where the N^2 of a model "
+            "does not quite fit its density)"
+        )
     yield f"# {verdict_sentence(modes)}"
 
 

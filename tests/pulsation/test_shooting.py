@@ -23,6 +23,7 @@ from oscsolve import (
     layered_sphere,
     load_modes,
     polytrope,
+    read_model,
     save_modes,
     solve_modes,
     uniform_sphere,
@@ -158,6 +159,14 @@ def test_the_sun_agrees_without_perturbed_gravity(sun: StarModel):
         sun, (0, 1, 2), (2950.0, 3100.0), gravity="cowling", verify=True, options=BARE
     )
     assert np.all(modes.confirmed) and np.all(relative(modes) < 1e-10)
+
+
+def test_a_demo_star_agrees():
+    star = read_model(Path(__file__).resolve().parents[2] / "models_demo" / "lantern-1.fgong")
+    modes = solve_modes(
+        star, (0, 1, 2, 3), (2000.0, 2300.0), surface="isothermal", verify=True, options=BARE
+    )
+    assert len(modes) >= 6 and np.all(modes.confirmed) and np.all(relative(modes) < 1e-8)
 
 
 def test_mixed_modes_of_a_subgiant_agree(subgiant: StarModel):
