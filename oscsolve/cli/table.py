@@ -162,8 +162,8 @@ def _census(modes: ModeSet) -> Iterator[str]:
             "order; n follows the spectrum and holds"
         )
         yield (
-            "# (nodes can fail for l >= 2 in condensed stars, and for l = 1 where N^2 does not quite "
-            "fit the density)"
+            "# (nodes can fail for l >= 2 in condensed stars, and for l = 1 where N^2 does not "
+            "quite fit the density)"
         )
     yield f"# {verdict_sentence(modes)}"
 
