@@ -100,6 +100,7 @@ def summary_lines(summary: GridSummary) -> Iterator[str]:
     if summary.solved:
         rate = rate_text(summary.solved / summary.seconds)
         yield _entry("solved", f"{summary.solved} in {duration(summary.seconds)}, {rate}")
+    if summary.solving > 0.0:
         yield _entry("workers", f"{100 * summary.solving:.0f} % of their time in the solver")
 
 
