@@ -57,6 +57,11 @@ _SUFFIXES = (".h5", ".hdf5")
 @click.option("--eigenfunctions", is_flag=True, help="Keep the eigenfunctions; they are large.")
 @click.option("--verify", is_flag=True, help="Recompute every mode by shooting.")
 @click.option(
+    "--warm-start",
+    is_flag=True,
+    help="Search each model from the modes of the one before it in its folder.",
+)
+@click.option(
     "--dry-run", is_flag=True, help="Tell what would run, and how long; solves a few, writes none."
 )
 @overwrite_option

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import os
+import threading
 import time
 from dataclasses import dataclass, replace
 from typing import Any
 
 from oscsolve.errors import OscsolveError
+from oscsolve.grid.deal import track_of
 from oscsolve.grid.plan import Planned
 from oscsolve.pulsation.modeset import ModeSet
 from oscsolve.pulsation.options import SolveOptions
@@ -32,6 +34,7 @@ class Settings:
     verify: bool = False
     gravitational_constant: float | None = None
     options: SolveOptions = SolveOptions(eigenfunctions=False)
+    warm_start: bool = False
 
     def recorded(self) -> dict[str, object]:
         """As plain values, for the store."""
@@ -51,6 +54,7 @@ class Settings:
             "cells_factor": self.options.cells_factor,
             "most_cells": self.options.most_cells,
             "eigenfunctions": self.options.eigenfunctions,
+            "warm_start": self.warm_start,
         }
 
 
@@ -87,7 +91,8 @@ def solve_planned(planned: Planned, settings: Settings) -> Outcome:
         elif settings.gravitational_constant is not None:
             star = star.with_changes(gravitational_constant=settings.gravitational_constant)
         begun = time.perf_counter()
-        modes = solve_star(star, settings)
+        modes = solve_star(star, settings, _memory.recall(planned, settings))
+        _memory.keep(planned, modes)
         solving = time.perf_counter() - begun
         row = row_of_modes(modes, **_labels(planned, star))
     except OscsolveError as error:
@@ -98,7 +103,27 @@ def solve_planned(planned: Planned, settings: Settings) -> Outcome:
     return Outcome(row, stamp, time.perf_counter() - started, solving)
 
 
-def solve_star(star: StarModel, settings: Settings) -> ModeSet:
+class _Memory(threading.local):
+    """The modes of the last star that a worker has solved, for the next one of its track."""
+
+    def __init__(self) -> None:
+        self._track = ""
+        self._modes: ModeSet | None = None
+
+    def keep(self, planned: Planned, modes: ModeSet) -> None:
+        """Remember the modes, not the star or the eigenfunctions."""
+        self._track, self._modes = track_of(planned), replace(modes, eigenfunctions=None)
+
+    def recall(self, planned: Planned, settings: Settings) -> ModeSet | None:
+        """What is remembered of the same track, if the run wants that."""
+        known = settings.warm_start and self._track == track_of(planned)
+        return self._modes if known else None
+
+
+_memory = _Memory()
+
+
+def solve_star(star: StarModel, settings: Settings, similar: ModeSet | None = None) -> ModeSet:
     """The mode list of one star, in one thread: a grid has one worker for each core."""
     return solve_modes(
         star,
@@ -109,6 +134,7 @@ def solve_star(star: StarModel, settings: Settings) -> ModeSet:
         surface=settings.surface,
         tolerance=settings.tolerance,
         verify=settings.verify,
+        similar=similar,
         options=replace(settings.options, threads=1),
     )
 

@@ -34,6 +34,7 @@ _MODES_AT_ONCE = 1 << 16
 #: Options that a grid records and the mode list of one star does not.
 _OF_THE_GRID = (
     "band_first", "band_second", "band_unit", "gravitational_constant", "eigenfunctions",
+    "warm_start",
 )  # fmt: skip
 
 

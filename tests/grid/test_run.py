@@ -382,6 +382,26 @@ def test_eigenfunctions_are_kept_on_request(solve, kit, field, tmp_path):
     np.testing.assert_array_equal(modes.eigenfunction(2).xi_r, alone.eigenfunction(2).xi_r)
 
 
+def test_a_warm_start_finds_the_same_modes(solve, field, undisturbed, tmp_path, monkeypatch):
+    """Each model but the first is searched from the one before; census and labels are the same."""
+    given = []
+    plain = work.solve_modes
+
+    def watched(star, *args, **keywords):
+        if "similar" in keywords:
+            given.append(keywords["similar"])
+        return plain(star, *args, **keywords)
+
+    monkeypatch.setattr(work, "solve_modes", watched)
+    assert solve(field, warm_start=True).complete == len(field)
+    assert given[0] is None and all(modes is not None for modes in given[1:])
+    cold, warm = oscsolve.load_grid(undisturbed), oscsolve.load_grid(tmp_path / "grid.h5")
+    for one, other in zip(cold, warm, strict=True):
+        np.testing.assert_array_equal(one.order, other.order)
+        np.testing.assert_array_equal(one.census.counted, other.census.counted)
+        assert np.all(np.abs(one.nu - other.nu) <= one.nu_error)
+
+
 def test_a_second_opinion_is_kept(solve, field, tmp_path):
     assert solve(field[:1], verify=True).complete == 1
     row = oscsolve.load_grid(tmp_path / "grid.h5").row(0)
