@@ -36,8 +36,6 @@ def mean_density_ratio(
     return {kind: float(np.median(v)) for kind, v in _density_ratios(radius, mass, density).items()}
 
 
-# Columns that make no sense give NaN here, which then passes no test.
-@np.errstate(all="ignore")
 def _density_ratios(
     radius: np.ndarray, mass: np.ndarray, density: np.ndarray
 ) -> dict[str, np.ndarray]:
@@ -54,8 +52,6 @@ def _density_ratios(
     }
 
 
-# Columns that make no sense give NaN here, which then passes no test.
-@np.errstate(all="ignore")
 def face_gravity(
     radius: np.ndarray, mass: np.ndarray, pressure: np.ndarray, density: np.ndarray
 ) -> tuple[float, float]:
@@ -110,8 +106,6 @@ def is_staggered(draft: Draft) -> bool:
     return bool(by_mass)
 
 
-# A centre at r = 0 gives NaN, which is left out.
-@np.errstate(all="ignore")
 def _node_balance(r: np.ndarray, m: np.ndarray, p: np.ndarray, d: np.ndarray) -> float:
     load = m * d / r**2
     step = 0.5 * (load[1:] + load[:-1]) * np.diff(r)
@@ -140,8 +134,6 @@ def to_centres(draft: Draft, n2_at_faces: bool) -> None:
     draft.columns["radius"], draft.columns["mass"] = centre_r, centre_m
 
 
-# Columns that make no sense give NaN here, which then passes no test.
-@np.errstate(all="ignore")
 def buoyancy_at_faces(draft: Draft, gravity: float) -> bool:
     """True if the N^2 of a staggered file belongs to the outer faces of its cells.
 

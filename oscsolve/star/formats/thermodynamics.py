@@ -158,8 +158,6 @@ def _settle_buoyancy(
         _use_thermal_form(draft, gas, charge, digits)
 
 
-# Temperatures and mixtures that make no sense give NaN here, which the star then refuses.
-@np.errstate(all="ignore")
 def _use_thermal_form(
     draft: Draft, gas: GasState, charge: np.ndarray | None, digits: float
 ) -> None:
