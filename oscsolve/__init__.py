@@ -73,7 +73,7 @@ if TYPE_CHECKING:
     )
     from oscsolve.seismology.tables import read_rotation, read_splittings
     from oscsolve.seismology.two_zones import MeanRotation, MeasuredSplittings, mean_rotation
-    from oscsolve.star.build import layered_sphere, polytrope, uniform_sphere
+    from oscsolve.star.build import Run, build_star, layered_sphere, polytrope, uniform_sphere
     from oscsolve.star.findings import Finding
     from oscsolve.star.formats import read_model, write_model
     from oscsolve.star.inspection import Figures, Inspection, inspect_model
@@ -114,12 +114,14 @@ _HOMES = {
     "PeriodSpacingFit": "oscsolve.seismology.period_spacing",
     "PeriodSpacings": "oscsolve.seismology.period_spacing",
     "Rotation": "oscsolve.seismology.rotation",
+    "Run": "oscsolve.star.build",
     "Separation": "oscsolve.seismology.separations",
     "SolveOptions": "oscsolve.pulsation.options",
     "Splittings": "oscsolve.seismology.rotation",
     "StarModel": "oscsolve.star.model",
     "acoustic_depth": "oscsolve.seismology.depth",
     "asymptotics": "oscsolve.seismology.asymptotics",
+    "build_star": "oscsolve.star.build",
     "combine_frequencies": "oscsolve.seismology.separations",
     "effective_temperature": "oscsolve.seismology.scaling",
     "energy_density": "oscsolve.seismology.energy",
@@ -197,6 +199,7 @@ __all__ = [
     "PeriodSpacingFit",
     "PeriodSpacings",
     "Rotation",
+    "Run",
     "Separation",
     "SolveOptions",
     "Splittings",
@@ -204,6 +207,7 @@ __all__ = [
     "__version__",
     "acoustic_depth",
     "asymptotics",
+    "build_star",
     "combine_frequencies",
     "effective_temperature",
     "energy_density",

@@ -29,6 +29,10 @@ GAS_CONSTANT = 8.31446261815324e7
 #: Radiation density constant a, erg cm^-3 K^-4 (CODATA 2018).
 RADIATION_CONSTANT = 7.565733e-15
 
+#: Electron volt, erg (exact, SI 2019).
+ELECTRON_VOLT = 1.602176634e-12
+#: Stefan-Boltzmann constant, erg cm^-2 s^-1 K^-4 (CODATA 2018).
+STEFAN_BOLTZMANN = 5.670374419e-5
 #: Rest energy of the electron m c^2, erg (CODATA 2018).
 ELECTRON_REST_ENERGY = 8.1871057769e-7
 #: 8 pi (m c/h)^3, cm^-3: electrons of momentum below m c hold a third of it (CODATA 2018

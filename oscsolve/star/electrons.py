@@ -68,6 +68,53 @@ def electron_gas(number_density: np.ndarray, temperature: np.ndarray) -> Electro
     return ElectronGas(eta, *(COMPTON_DENSITY * ELECTRON_REST_ENERGY * column for column in rest))
 
 
+@dataclass(frozen=True, eq=False)
+class Electrons:
+    """Electrons of a given eta; arrays of one shape, cgs units.
+
+    Attributes
+    ----------
+    number, pressure : n in cm^-3, P in dyn cm^-2
+    by_eta, by_t : dln n/d eta at constant T, dln n/dlnT at constant eta
+    pressure_by_t : dP/dlnT at constant eta; dP/d eta is n kT
+    energy_by_eta, energy_by_t : dU/d eta and dU/dlnT likewise, U the kinetic energy per volume
+    """
+
+    number: np.ndarray
+    pressure: np.ndarray
+    by_eta: np.ndarray
+    by_t: np.ndarray
+    pressure_by_t: np.ndarray
+    energy_by_eta: np.ndarray
+    energy_by_t: np.ndarray
+
+
+def electrons_of_eta(eta: np.ndarray, temperature: np.ndarray) -> Electrons:
+    """The electron gas as a function of its chemical potential over kT and of T in K.
+
+    Notes
+    -----
+    From `electron_gas`, whose derivatives are at constant n: with <x> = -(d eta/dlnT) at
+    constant n, the identities dln n/dlnT = <x> dln n/d eta and dU/dln n = n kT <x> hold.
+    """
+    t = BOLTZMANN * temperature / ELECTRON_REST_ENERGY
+    parts = [_of_eta(eta[k : k + _CHUNK], t[k : k + _CHUNK]) for k in range(0, eta.size, _CHUNK)]
+    number, slope, mean, *rest = (np.concatenate(column) for column in zip(*parts, strict=True))
+    pressure, by_density, by_temperature, heat = rest
+    unit = COMPTON_DENSITY * ELECTRON_REST_ENERGY
+    by_t = slope * mean
+    per_ln_n = number * t * mean
+    return Electrons(
+        number=COMPTON_DENSITY * number,
+        pressure=unit * pressure,
+        by_eta=slope,
+        by_t=by_t,
+        pressure_by_t=unit * (by_temperature + by_density * by_t),
+        energy_by_eta=unit * per_ln_n * slope,
+        energy_by_t=unit * (heat + per_ln_n * by_t),
+    )
+
+
 def cold_pressure(y: np.ndarray) -> np.ndarray:
     """p0(y), the pressure of cold electrons of Fermi momentum y mc over 8 pi (mc/h)^3 mc^2.
 
@@ -86,18 +133,27 @@ def cold_pressure(y: np.ndarray) -> np.ndarray:
 def _state(n: np.ndarray, t: np.ndarray) -> tuple[np.ndarray, ...]:
     """eta, P, dP/dln n, dP/dln T, dU/dln T of n in N and t = kT/mc^2, in units of N mc^2."""
     eta = _degeneracy(n, t)
+    return eta, *_of_eta(eta, t)[3:]
+
+
+def _of_eta(eta: np.ndarray, t: np.ndarray) -> tuple[np.ndarray, ...]:
+    """n in N, dln n/d eta, <x>, and P, dP/dln n, dP/dln T, dU/dln T in units of N mc^2."""
     x, w = _nodes(eta)
     y, eps = _momentum(x, t)
+    cube = y**3 / 3.0 * w
+    n = np.sum(cube, axis=1)
     states = y * (1.0 + eps) * t[:, None] * w
     number = np.sum(states, axis=1)
     mean = np.sum(states * x, axis=1) / number
     off = x - mean[:, None]
     return (
-        eta,
+        n,
+        number / n,
+        mean,
         np.sum(cold_pressure(y) * w, axis=1),
         n * n * t / number,
         # Differences from the mean: what is left of a cold gas is small, and would cancel.
-        t * np.sum(y**3 / 3.0 * off * w, axis=1),
+        t * np.sum(cube * off, axis=1),
         t * np.sum(states * off * off, axis=1),
     )
 
