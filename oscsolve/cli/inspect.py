@@ -77,10 +77,10 @@ def command(
         from oscsolve.plots.figure import save_figure
         from oscsolve.plots.propagation import propagation_diagram
 
-        shown = tuple(degree for degree in degrees if degree > 0)[:3] or (1,)
+        shown = [degree for degree in degrees if degree > 0][:3] or [1]
         save_figure(
             plot_path,
-            lambda axes: propagation_diagram(axes, star, degrees=shown),
+            lambda axes: propagation_diagram(axes, star, degrees=shown, band=found.band),
             star.name,
             overwrite=overwrite,
         )

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, TypeVar
 
 import click
 
@@ -16,213 +16,314 @@ from oscsolve.errors import InputError
 if TYPE_CHECKING:
     from oscsolve.pulsation.modeset import ModeSet
 
-WHAT = ("propagation", "echelle", "spacing", "inertia", "eigenfunction", "kernel")
+#: Endings that a picture may have.
+PICTURES = (".png", ".pdf", ".svg")
+#: Choice of --of: what changes and what is held; None for rotation.
 _KERNELS = {
     "rotation": None,
     "c2": ("c2", "rho"),
-    "gamma1": ("gamma1", "rho"),
     "rho": ("rho", "c2"),
+    "gamma1": ("gamma1", "rho"),
+    "rho-gamma1": ("rho", "gamma1"),
 }
+#: Height of a panel in units of the usual one: square figures, and one of two panels.
+_SQUARE, _HALF = 1.35, 0.8
+#: Modes whose kernels one figure shows.
+_MOST = 8
+
+_Function = TypeVar("_Function", bound=Callable[..., Any])
+_Panel = Callable[[Any], Any]
 
 
-@click.command("plot")
-@click.argument("what", type=click.Choice(WHAT))
-@click.argument("path", metavar="FILE", type=click.Path(path_type=Path))
-@click.option(
-    "-o",
-    "--out",
-    type=click.Path(path_type=Path),
-    required=True,
-    metavar="PICTURE",
-    help="File to write; its ending says the format: .png, .pdf or .svg.",
+@click.group("plot", invoke_without_command=True, no_args_is_help=False)
+@click.pass_context
+def command(ctx: click.Context) -> None:
+    """Draw a figure of a mode list (oscsolve modes MODEL --out FILE.h5) as PNG, PDF or SVG."""
+    if ctx.invoked_subcommand is None:
+        click.echo(ctx.get_help())
+
+
+def _figure(function: _Function) -> _Function:
+    """What every figure needs."""
+    out = click.option(
+        "-o",
+        "--out",
+        type=click.Path(path_type=Path),
+        required=True,
+        metavar="PICTURE",
+        help="File to write; its ending says the format: .png, .pdf or .svg.",
+    )
+    path = click.argument("path", metavar="FILE", type=click.Path(path_type=Path))
+    return path(out(overwrite_option(function)))
+
+
+_degrees = click.option(
+    "--degrees", type=DegreesType(), metavar="LIST", help="Degrees to draw, such as 1-2."
 )
-@click.option(
-    "--degrees",
-    type=DegreesType(),
-    metavar="LIST",
-    help="Degrees to draw, such as 1-2. Default: 1-2 for propagation, all elsewhere.",
-)
-@click.option(
-    "--mode",
-    "wanted",
-    multiple=True,
-    metavar="L,N",
-    help="Mode of degree L and order N, for eigenfunction (one) and kernel (up to eight). Default: "
-    "the middle of the list.",
-)
-@click.option(
+_axis = click.option(
     "--axis",
-    type=click.Choice(("auto", "radius", "log-radius", "pressure")),
+    # As `oscsolve.plots.COORDINATES`, which would load matplotlib.
+    type=click.Choice(("auto", "radius", "log-radius", "mass", "pressure")),
     default="auto",
     show_default=True,
-    help="Horizontal axis of propagation and eigenfunction.",
+    help="What runs along the horizontal axis; auto takes what shows most of the star.",
 )
+
+
+def _mode(text: str) -> Callable[[_Function], _Function]:
+    return click.option("--mode", "named", multiple=True, metavar="L,N", help=text)
+
+
+@command.command("propagation")
+@_figure
+@_degrees
+@_mode("Draw the mode of degree L and order N; may be given several times.")
+@_axis
+def propagation(
+    path: Path,
+    out: Path,
+    overwrite: bool,
+    degrees: tuple[int, ...] | None,
+    named: tuple[str, ...],
+    axis: str,
+) -> int:
+    """N and S_l through the star, the band, and the modes with their nodes.
+
+    FILE is a mode list or a model. Without --degrees S_l is drawn for l up to 3; the cavities, and
+    the modes unless they are named, are those of the lowest degree above 0.
+    """
+    _check(out, overwrite, path)
+    from oscsolve.plots.propagation import propagation_diagram
+    from oscsolve.store import is_mode_file
+
+    if degrees is not None and not any(degrees):
+        raise InputError("a propagation diagram shows degrees above 0; give --degrees 1-2")
+    modes = oscsolve.load_modes(path) if is_mode_file(path) else None
+    star = oscsolve.read_model(path) if modes is None else modes.star
+    if modes is None and named:
+        raise InputError(f"{path}: a model holds no modes; --mode goes with a mode list")
+    rows = None if modes is None or not named else [_row(modes, text) for text in named]
+
+    def draw(axes: Any) -> Any:
+        return propagation_diagram(axes, star, modes, degrees=degrees, rows=rows, coordinate=axis)
+
+    return _save([draw], path, out, overwrite, star.name)
+
+
+@command.command("echelle")
+@_figure
+@_degrees
 @click.option(
     "--fold",
     type=click.Choice(("auto", "frequency", "period")),
     default="auto",
     show_default=True,
-    help="What an echelle folds.",
+    help="What is folded; auto: periods where most modes are g modes and no convective envelope "
+    "drives p modes.",
 )
 @click.option(
-    "--width", type=NumberType(0.0), metavar="X", help="Width of an echelle, uHz or s, set by hand."
+    "--width",
+    type=NumberType(0.0),
+    metavar="X",
+    help="What it is folded with, uHz or s. Default: the large separation, the period spacing.",
 )
 @click.option(
     "--observed",
     type=click.Path(path_type=Path),
     metavar="FILE",
-    help="Observed list (CSV) to draw into an echelle.",
+    help="Observed frequencies (CSV) to draw as well.",
 )
+def echelle(
+    path: Path,
+    out: Path,
+    overwrite: bool,
+    degrees: tuple[int, ...] | None,
+    fold: str,
+    width: float | None,
+    observed: Path | None,
+) -> int:
+    """Frequencies folded with the large separation, or periods with their spacing."""
+    _check(out, overwrite, path, observed)
+    if fold == "period" and observed is not None:
+        raise click.UsageError("--observed holds frequencies; it goes with --fold frequency")
+    from oscsolve.plots.choose import folds_periods
+    from oscsolve.plots.echelle import frequency_echelle, period_echelle
+
+    modes = _load(path, degrees)
+    seen = None if observed is None else oscsolve.read_observed(observed)
+    if fold == "period" or (fold == "auto" and seen is None and folds_periods(modes)):
+        return _save(
+            [lambda axes: period_echelle(axes, modes, degrees, width)],
+            path,
+            out,
+            overwrite,
+            modes.star.name,
+            _SQUARE,
+        )
+    return _save(
+        [lambda axes: frequency_echelle(axes, modes, width, seen)],
+        path,
+        out,
+        overwrite,
+        modes.star.name,
+        _SQUARE,
+    )
+
+
+@command.command("spacing")
+@_figure
+@_degrees
+def spacing(path: Path, out: Path, overwrite: bool, degrees: tuple[int, ...] | None) -> int:
+    """Steps in period between g modes of consecutive order, against period."""
+    _check(out, overwrite, path)
+    from oscsolve.plots.spacing import spacing_plot
+
+    modes = _load(path, degrees)
+    return _save([lambda axes: spacing_plot(axes, modes)], path, out, overwrite, modes.star.name)
+
+
+@command.command("inertia")
+@_figure
+@_degrees
+def inertia(path: Path, out: Path, overwrite: bool, degrees: tuple[int, ...] | None) -> int:
+    """Normalised inertia against frequency."""
+    _check(out, overwrite, path)
+    from oscsolve.plots.inertia import inertia_plot
+
+    modes = _load(path, degrees)
+    return _save([lambda axes: inertia_plot(axes, modes)], path, out, overwrite, modes.star.name)
+
+
+@command.command("eigenfunction")
+@_figure
+@_mode("Mode of degree L and order N. Default: one in the middle of the list.")
+@_axis
+def eigenfunction(path: Path, out: Path, overwrite: bool, named: tuple[str, ...], axis: str) -> int:
+    """Displacements of one mode with its nodes and cavities, and where its energy is."""
+    _check(out, overwrite, path)
+    if len(named) > 1:
+        raise click.UsageError(f"this figure shows one mode; got --mode {len(named)} times")
+    from oscsolve.plots.choose import lightest_row
+    from oscsolve.plots.eigenfunction import displacement_plot, energy_plot
+
+    modes = _load(path, eigenfunctions=True)
+    row = _row(modes, named[0]) if named else lightest_row(modes)
+    panels: list[_Panel] = [
+        lambda axes: displacement_plot(axes, modes, row, coordinate=axis),
+        lambda axes: energy_plot(axes, modes, row, coordinate=axis),
+    ]
+    title = f"{modes.star.name}, {_title(modes, row)}"
+    done = _save(panels, path, out, overwrite, title, _HALF)
+    if not named:
+        _say_chosen(modes, [row])
+    return done
+
+
+@command.command("kernel")
+@_figure
+@_mode("Mode of degree L and order N, up to eight times. Default: two in the middle of the list.")
 @click.option(
     "--of",
     "quantity",
     type=click.Choice(tuple(_KERNELS)),
     default="rotation",
     show_default=True,
-    help="Kernel of rotation, or of c^2 at fixed rho, Gamma1 at fixed rho, rho at fixed c^2.",
+    help="Rotation, or a change of c^2 at fixed rho, of rho at fixed c^2, of Gamma1 at fixed rho, "
+    "of rho at fixed Gamma1.",
 )
-@overwrite_option
-def command(
-    what: str,
-    path: Path,
-    out: Path,
-    degrees: tuple[int, ...] | None,
-    wanted: tuple[str, ...],
-    axis: str,
-    fold: str,
-    width: float | None,
-    observed: Path | None,
-    quantity: str,
-    overwrite: bool,
+@_axis
+def kernel(
+    path: Path, out: Path, overwrite: bool, named: tuple[str, ...], quantity: str, axis: str
 ) -> int:
-    """Draw WHAT from FILE, a mode list (oscsolve modes --out); propagation also from a model."""
-    inputs = [source for source in (path, observed) if source is not None]
-    check_output(out, overwrite=overwrite, suffixes=(".png", ".pdf", ".svg"), inputs=inputs)
-    # Loaded here so that --help does not wait for matplotlib.
-    from oscsolve.plots.figure import save_figure
+    """Kernels of some modes: what splittings say of rotation, or frequencies of the structure."""
+    _check(out, overwrite, path)
+    from oscsolve.plots import kernel as drawn
+    from oscsolve.plots.choose import contrasting_rows
 
-    if what == "propagation":
-        draw, name = _propagation(path, degrees or (1, 2), axis)
-    else:
-        modes = oscsolve.load_modes(path)
-        name = modes.star.name
-        shown = modes if degrees is None else _of_degrees(modes, degrees)
-        if what == "echelle":
-            draw = [_echelle(shown, fold, width, observed, degrees)]
-        elif what == "eigenfunction":
-            draw = _eigenfunction(modes, wanted, axis)
-            name = f"{name}, {_title(modes, _rows(modes, wanted, 1)[0])}"
-        elif what == "kernel":
-            draw = [_kernel(modes, wanted, quantity)]
-        else:
-            draw = [_list_figure(what, shown)]
-    height = 1.35 if what == "echelle" else 0.8 if len(draw) > 1 else 1.0
-    save_figure(out, draw, name, height=height, overwrite=overwrite)
-    return 0
-
-
-Panels = list[Callable[[Any], Any]]
-
-
-def _propagation(path: Path, degrees: tuple[int, ...], axis: str) -> tuple[Panels, str]:
-    from oscsolve.plots.propagation import propagation_diagram
-    from oscsolve.store import is_mode_file
-
-    degrees = tuple(degree for degree in degrees if degree > 0)
-    if not degrees:
-        raise InputError("a propagation diagram shows degrees above 0; give --degrees 1-2")
-    modes = oscsolve.load_modes(path) if is_mode_file(path) else None
-    star = oscsolve.read_model(path) if modes is None else modes.star
-
-    def draw(axes: Any) -> Any:
-        return propagation_diagram(axes, star, modes, degrees=degrees, coordinate=axis)
-
-    return [draw], star.name
-
-
-def _echelle(
-    modes: ModeSet,
-    fold: str,
-    width: float | None,
-    observed: Path | None,
-    degrees: tuple[int, ...] | None,
-) -> Callable[[Any], Any]:
-    from oscsolve.plots.echelle import frequency_echelle, period_echelle
-
-    nonradial = [int(degree) for degree in modes.census.degree if degree > 0]
-    g_rich = bool(((modes.n_g > 0) & (modes.n_p == 0)).sum() > 0.5 * len(modes))
-    if fold == "period" or (fold == "auto" and g_rich and observed is None):
-        if not nonradial:
-            raise InputError("periods are folded for l > 0, and the list holds radial modes only")
-        degree = nonradial[0]
-        return lambda axes: period_echelle(axes, modes, degree, width)
-    seen = None if observed is None else oscsolve.read_observed(observed)
-    return lambda axes: frequency_echelle(axes, modes, width, seen)
-
-
-def _eigenfunction(modes: ModeSet, wanted: tuple[str, ...], axis: str) -> Panels:
-    from oscsolve.plots.eigenfunction import displacement_plot, energy_plot
-
-    row = _rows(modes, wanted, 1)[0]
-    return [
-        lambda axes: displacement_plot(axes, modes, row, coordinate=axis),
-        lambda axes: energy_plot(axes, modes, row, coordinate=axis),
-    ]
-
-
-def _kernel(modes: ModeSet, wanted: tuple[str, ...], quantity: str) -> Callable[[Any], Any]:
-    from oscsolve.plots.kernel import rotation_kernel_plot, structure_kernel_plot
-
+    modes = _load(path, eigenfunctions=True)
+    if len(named) > _MOST:
+        raise click.UsageError(f"this figure shows up to {_MOST} modes; got {len(named)}")
+    rows = [_row(modes, text) for text in named] if named else contrasting_rows(modes)
     pair = _KERNELS[quantity]
-    rows = _rows(modes, wanted, 8, nonradial=pair is None)
+    panels: list[_Panel]
     if pair is None:
-        return lambda axes: rotation_kernel_plot(axes, modes, rows)
-    return lambda axes: structure_kernel_plot(axes, modes, rows, quantity=pair[0], held=pair[1])
+        panels = [
+            lambda axes: drawn.rotation_kernel_plot(axes, modes, rows, coordinate=axis),
+            lambda axes: drawn.running_kernel_plot(axes, modes, rows, coordinate=axis),
+        ]
+    else:
+        what, held = pair
+        panels = [
+            lambda axes: drawn.structure_kernel_plot(
+                axes, modes, rows, quantity=what, held=held, coordinate=axis
+            )
+        ]
+    done = _save(panels, path, out, overwrite, modes.star.name, _HALF if pair is None else 1.0)
+    if not named:
+        _say_chosen(modes, rows)
+    return done
 
 
-def _list_figure(what: str, modes: ModeSet) -> Callable[[Any], Any]:
-    from oscsolve.plots.inertia import inertia_plot
-    from oscsolve.plots.spacing import spacing_plot
-
-    if what == "inertia":
-        return lambda axes: inertia_plot(axes, modes)
-    return lambda axes: spacing_plot(axes, modes)
+def _check(out: Path, overwrite: bool, *inputs: Path | None) -> None:
+    read = [path for path in inputs if path is not None]
+    check_output(out, overwrite=overwrite, suffixes=PICTURES, inputs=read)
 
 
-def _rows(
-    modes: ModeSet, wanted: tuple[str, ...], most: int, *, nonradial: bool = False
-) -> list[int]:
-    """Rows of the modes that were named, or one from the middle of the list."""
-    if modes.eigenfunctions is None:
-        raise InputError("the mode list holds no eigenfunctions; repeat oscsolve modes with --out")
-    if len(wanted) > most:
-        raise InputError(f"this figure shows at most {most} mode(s); got {len(wanted)}")
-    allowed = [k for k in range(len(modes)) if modes.degree[k] > 0 or not nonradial]
-    if not allowed:
-        raise InputError("the mode list holds no mode that can be drawn like this")
-    if not wanted:
-        return [allowed[len(allowed) // 2]]
-    return [_row(modes, text) for text in wanted]
+def _load(
+    path: Path, degrees: tuple[int, ...] | None = None, *, eigenfunctions: bool = False
+) -> ModeSet:
+    modes = oscsolve.load_modes(path)
+    if len(modes) == 0:
+        raise InputError(f"{path}: the list is empty; solve a wider band")
+    if eigenfunctions and modes.eigenfunctions is None:
+        raise InputError(f"{path}: holds no eigenfunctions; repeat oscsolve modes with --out")
+    if degrees is None:
+        return modes
+    missing = [degree for degree in degrees if degree not in modes.degree]
+    if missing:
+        listed = ", ".join(str(degree) for degree in sorted(set(modes.degree.tolist())))
+        raise InputError(f"{path}: the list has no modes of l = {missing[0]}; it has l = {listed}")
+    return modes.only(degrees)
 
 
 def _row(modes: ModeSet, text: str) -> int:
+    """Row of a mode that was named."""
     try:
         degree, order = (int(part) for part in text.split(","))
     except ValueError as error:
         raise InputError(f"--mode {text}: expected degree and order, such as 1,-3") from error
-    for row in range(len(modes)):
-        if modes.degree[row] == degree and modes.order[row] == order:
-            return row
-    raise InputError(f"--mode {text}: the list has no mode of l = {degree}, n = {order}")
+    found = ((modes.degree == degree) & (modes.order == order)).nonzero()[0]
+    if found.size:
+        return int(found[0])
+    orders = modes.order[modes.degree == degree]
+    has = f"; of l = {degree} it has n = {orders.min()} to {orders.max()}" if orders.size else ""
+    raise InputError(f"--mode {text}: the list has no mode of l = {degree}, n = {order}{has}")
+
+
+def _say_chosen(modes: ModeSet, rows: Sequence[int]) -> None:
+    which = " and ".join(f"l = {modes.degree[row]}, n = {modes.order[row]}" for row in rows)
+    click.echo(f"oscsolve: note: no mode was named; {which} was drawn", err=True)
 
 
 def _title(modes: ModeSet, row: int) -> str:
     kind = f"{modes.kind[row]}, " if modes.kind[row] != "radial" else ""
-    return f"l = {modes.degree[row]}, n = {modes.order[row]}, {kind}{modes.nu[row]:.6g} uHz"
+    counts = f"n_p = {modes.n_p[row]}, n_g = {modes.n_g[row]}"
+    from oscsolve.plots.style import frequency_text
+
+    nu = f"{frequency_text(modes.nu[row])} \u03bcHz"
+    return f"l = {modes.degree[row]}, n = {modes.order[row]} ({kind}{counts}), {nu}".replace(
+        "-", "\u2212"
+    )
 
 
-def _of_degrees(modes: ModeSet, degrees: tuple[int, ...]) -> ModeSet:
-    missing = [degree for degree in degrees if degree not in modes.census.degree]
-    if missing:
-        raise InputError(f"--degrees: the list has no l = {missing[0]}")
-    return modes.only(degrees)
+def _save(
+    panels: list[_Panel], path: Path, out: Path, overwrite: bool, title: str, height: float = 1.0
+) -> int:
+    from oscsolve.plots.figure import make_figure, write_figure
+
+    try:
+        figure = make_figure(panels, title, height=height)
+    except InputError as error:
+        raise InputError(f"{path}: {error}") from error
+    write_figure(out, figure, overwrite=overwrite)
+    return 0

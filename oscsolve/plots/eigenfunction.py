@@ -2,111 +2,141 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 from matplotlib.axes import Axes
+from matplotlib.patches import Patch
 
-from oscsolve.plots.coordinate import Coordinate
-from oscsolve.plots.propagation import mode_nodes
-from oscsolve.plots.style import BUOYANCY, FAINT, G_SHADE, OBSERVED, P_SHADE, SOUND
+from oscsolve.plots.coordinate import coordinate_of, dress_coordinate
+from oscsolve.plots.interior import Trace, fill_cavities, nodes_of, trace
+from oscsolve.plots.propagation import node_key
+from oscsolve.plots.style import FILLS, SOFT, colour, key_above, line, looking, mark_zero, thinned
 from oscsolve.pulsation.modeset import ModeSet
-from oscsolve.seismology.energy import energy_density
-from oscsolve.seismology.integrals import point_structure
+from oscsolve.seismology.integrals import Quadrature
 
 
+@looking
 def displacement_plot(axes: Axes, modes: ModeSet, index: int, *, coordinate: str = "auto") -> Axes:
-    """xi_r and xi_h of a mode, times r sqrt(rho), with the nodes of xi_r and shaded cavities.
+    """xi_r and sqrt(l(l+1)) xi_h of a mode, with the nodes of xi_r and filled cavities.
 
-    The factor makes squares into energy per radius: without it nothing but the surface is seen.
-    Both are scaled by the largest of them.
+    Both are times r sqrt(rho), which makes their squares add up to the energy per radius: without
+    it nothing but the surface is seen. They are scaled by the largest value.
 
     Parameters
     ----------
     axes : to draw on
     modes : mode list with eigenfunctions
     index : row of the mode
-    coordinate : one of `oscsolve.plots.coordinate.COORDINATES`
+    coordinate : one of `oscsolve.plots.COORDINATES`
 
     Raises
     ------
     InputError
         The list holds no eigenfunctions, or no such mode.
+
+    Examples
+    --------
+    >>> import oscsolve
+    >>> from oscsolve import plots
+    >>> modes = oscsolve.solve_modes(oscsolve.polytrope(3), [1], (20, 60), unit="sigma2")
+    >>> figure = plots.make_figure(lambda axes: plots.displacement_plot(axes, modes, 0))
+    >>> figure.axes[0].get_xlabel()
+    '$r/R$'
     """
-    eigen, star = modes.eigenfunction(index), modes.star
-    across = Coordinate(star, coordinate)
-    degree = int(modes.degree[index])
-    factor = eigen.radius * np.sqrt(star.density)
-    radial = eigen.xi_r * factor
-    horizontal = np.sqrt(degree * (degree + 1.0)) * eigen.xi_h * factor
+    quadrature, mode, degree = _mode(modes, index)
+    along = coordinate_of(modes.star, coordinate)
+    place = along.place(mode.at)
+    radial, horizontal = _amplitudes(mode, degree)
     largest = max(float(np.abs(radial).max()), float(np.abs(horizontal).max())) or 1.0
-    _shade(axes, modes, index, across)
-    axes.axhline(0.0, color=FAINT, lw=0.7)
-    axes.plot(across.values, radial / largest, color=SOUND, label=r"$\xi_r$")
+    dress_coordinate(axes, modes.star, along)
+    kinds = fill_cavities(axes, quadrature.points, along, degree, float(modes.sigma2[index]))
+    mark_zero(axes)
+    handles: list[Any] = []
     if degree > 0:
-        axes.plot(
-            across.values,
-            horizontal / largest,
-            color=BUOYANCY,
-            ls="--",
-            label=r"$\sqrt{l(l+1)}\,\xi_h$",
-        )
-    nodes = mode_nodes(modes, index)
-    axes.plot(
-        across.at(nodes, star),
-        np.zeros(nodes.size),
-        "|",
-        color=OBSERVED,
-        ms=6.0,
-        label=r"nodes of $\xi_r$",
+        text = r"$\sqrt{\ell(\ell+1)}\,\xi_h$"
+        handles += axes.plot(place, horizontal / largest, color=SOFT, lw=0.8, label=text)
+    handles[:0] = axes.plot(
+        place, radial / largest, color=colour(degree), lw=1.2, label=r"$\xi_r$", zorder=3
     )
-    across.dress(axes)
-    axes.set_ylabel(r"displacement $\times\; r\sqrt{\rho}$, scaled")
-    axes.legend(loc="upper left", bbox_to_anchor=(1.0, 1.0), handletextpad=0.4)
+    nodes = nodes_of(mode, degree, along)
+    for acoustic in (True, False):
+        x = nodes.place[nodes.acoustic == acoustic]
+        own = colour(degree)
+        dots: dict[str, Any] = {"mfc": own if acoustic else "white", "mec": own, "mew": 0.6}
+        axes.plot(x, np.zeros(x.size), "o", ms=3.0, ls="none", zorder=4, **dots)
+        if x.size:
+            handles.append(node_key(acoustic))
+    axes.set_ylim(-1.08, 1.08)
+    axes.set_ylabel(r"displacement $\times\;r\sqrt{\rho}$")
+    key_above(axes, handles + [Patch(color=FILLS[kind], label=f"{kind} cavity") for kind in kinds])
     return axes
 
 
+@looking
 def energy_plot(axes: Axes, modes: ModeSet, index: int, *, coordinate: str = "auto") -> Axes:
-    """Kinetic energy of a mode per step of the horizontal axis, scaled to an area of one.
+    """Kinetic energy of a mode per step of the horizontal axis, and the share of it inside.
 
-    Parameters and errors as of `displacement_plot`.
+    Parameters
+    ----------
+    axes : to draw on
+    modes : mode list with eigenfunctions
+    index : row of the mode
+    coordinate : one of `oscsolve.plots.COORDINATES`
+
+    Raises
+    ------
+    InputError
+        The list holds no eigenfunctions, or no such mode.
+
+    Examples
+    --------
+    >>> import oscsolve
+    >>> from oscsolve import plots
+    >>> modes = oscsolve.solve_modes(oscsolve.polytrope(3), [1], (20, 60), unit="sigma2")
+    >>> figure = plots.make_figure(lambda axes: plots.energy_plot(axes, modes, 0))
+    >>> figure.axes[0].get_ylabel()
+    'energy per $r/R$'
     """
-    across = Coordinate(modes.star, coordinate)
-    density = energy_density(modes, index)
-    x = modes.star.fractional_radius
-    if across.name == "log-radius":
-        density, what = density * x, r"$dE/d\ln r$"
-    elif across.name == "pressure":
-        lnp = np.log(np.where(across.use, modes.star.pressure, np.nan))
-        with np.errstate(invalid="ignore", divide="ignore"):
-            density = density / np.maximum(-np.gradient(lnp, x), 1e-300)
-        what = r"$dE/d\ln P$"
-    else:
-        what = r"$dE/d(r/R)$"
-    _shade(axes, modes, index, across)
-    axes.fill_between(across.values, density, color=SOUND, alpha=0.35, lw=0)
-    axes.plot(across.values, density, color=SOUND, lw=0.9)
-    across.dress(axes)
-    axes.set_ylim(bottom=0.0)
-    axes.set_ylabel(f"energy, {what}")
+    quadrature, mode, degree = _mode(modes, index)
+    along = coordinate_of(modes.star, coordinate)
+    place = along.place(mode.at)
+    radial, horizontal = _amplitudes(mode, degree)
+    energy = (radial**2 + horizontal**2).reshape(quadrature.x.shape)
+    total = quadrature.integral(energy)
+    density = energy.ravel() * along.stretch(mode.at) / total
+    dress_coordinate(axes, modes.star, along)
+    fill_cavities(axes, quadrature.points, along, degree, float(modes.sigma2[index]))
+    own = colour(degree)
+    across = np.log(place) if along.logarithmic else place
+    keep = thinned(across / np.ptp(across), density / density.max())
+    axes.fill_between(place[keep], density[keep], color=own, alpha=0.25, lw=0.0, zorder=2)
+    axes.plot(place, density, color=own, lw=0.9, zorder=3)
+    axes.set_ylim(0.0, 1.06 * float(density.max()))
+    axes.set_ylabel(f"energy per ${along.per}$")
+    draw_share(axes, place, quadrature.running(energy).ravel() / total)
     return axes
 
 
-def _shade(axes: Axes, modes: ModeSet, index: int, across: Coordinate) -> None:
-    """Where the mode is a gravity wave, and where a sound wave."""
-    at, lam = point_structure(modes.star), float(modes.sigma2[index])
-    lamb = at.lamb2(int(modes.degree[index]))
-    for inside, shade, name in (
-        ((lam < at.n2) & (lam < lamb), G_SHADE, "g cavity"),
-        ((lam > at.n2) & (lam > lamb), P_SHADE, "p cavity"),
-    ):
-        if np.any(inside & across.use):
-            axes.fill_between(
-                across.values,
-                0.0,
-                1.0,
-                where=inside & across.use,
-                transform=axes.get_xaxis_transform(),
-                color=shade,
-                lw=0,
-                zorder=0,
-                label=name,
-            )
+def draw_share(axes: Axes, place: np.ndarray, inside: np.ndarray) -> Axes:
+    """The share of something that is inside a place, against an axis of its own at the right."""
+    beside = axes.twinx()
+    beside.plot(place, inside, color=SOFT, lw=0.9, ls=line(1), label="_share")
+    beside.set_ylim(0.0, 1.06)
+    beside.set_ylabel("share inside (dashed)", color=SOFT)
+    beside.spines["right"].set_visible(True)
+    beside.tick_params(axis="y", which="both", colors=SOFT)
+    return beside
+
+
+def _mode(modes: ModeSet, index: int) -> tuple[Quadrature, Trace, int]:
+    # Asked first, for it knows what is wrong with an index.
+    modes.eigenfunction(index)
+    quadrature = Quadrature(modes)
+    return quadrature, trace(quadrature, index), int(modes.degree[index])
+
+
+def _amplitudes(mode: Trace, degree: int) -> tuple[np.ndarray, np.ndarray]:
+    """Displacements whose squares are energy per radius."""
+    factor = mode.at.x * np.sqrt(mode.at.rho)
+    return factor * mode.xi_r, factor * np.sqrt(degree * (degree + 1.0)) * mode.xi_h

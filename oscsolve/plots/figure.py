@@ -12,13 +12,13 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
 from oscsolve.errors import InputError
-from oscsolve.plots.style import look
+from oscsolve.plots.style import SOFT, look
 from oscsolve.star.formats.files import replacing
 
 #: Endings that a picture may have, and the format each stands for.
 FORMATS = {".png": "png", ".pdf": "pdf", ".svg": "svg"}
-#: Width and height of one panel, inch.
-_PANEL = (6.4, 4.0)
+#: Width and height of one panel, inch: the width of a page of A4 between margins.
+_PANEL = (6.5, 4.1)
 
 Draw = Callable[[Axes], Any]
 
@@ -29,8 +29,14 @@ def make_figure(draw: Draw | Sequence[Draw], title: str = "", *, height: float =
     Parameters
     ----------
     draw : functions that take an Axes, one a panel
-    title : stands above the first panel
+    title : small, above the first panel
     height : of each panel, in units of the usual one
+
+    Examples
+    --------
+    >>> from oscsolve import plots
+    >>> len(plots.make_figure([lambda axes: axes.plot([1, 2]), lambda axes: None]).axes)
+    2
     """
     panels = [draw] if callable(draw) else list(draw)
     with look():
@@ -41,8 +47,11 @@ def make_figure(draw: Draw | Sequence[Draw], title: str = "", *, height: float =
             one(place)
         for place in axes[:-1]:
             place.set_xlabel("")
+            place.tick_params(labelbottom=False)
         if title:
-            axes[0].set_title(title)
+            # A dollar sign in the name of a star is a dollar sign.
+            words = {"parse_math": False, "fontsize": 9.0, "color": SOFT}
+            figure.suptitle(title, x=0.995, ha="right", **words)
     return figure
 
 
@@ -53,6 +62,22 @@ def picture(figure: Figure, kind: str) -> bytes:
     with look():
         figure.savefig(stream, format=kind, metadata=dated)
     return stream.getvalue()
+
+
+def write_figure(
+    path: Path, figure: Figure, kind: str | None = None, *, overwrite: bool = False
+) -> None:
+    """Write a figure that appears complete or not at all; errors are those of `save_figure`."""
+    content = picture(figure, kind or _format(path))
+    with replacing(path, overwrite) as temporary:
+        temporary.write_bytes(content)
+
+
+def _format(path: Path) -> str:
+    kind = FORMATS.get(path.suffix.lower())
+    if kind is None:
+        raise InputError(f"{path}: the name must end in {', '.join(FORMATS)}")
+    return kind
 
 
 def save_figure(
@@ -71,9 +96,5 @@ def save_figure(
         The ending is none of .png, .pdf, .svg; or the file exists or cannot be written.
     """
     file = Path(path)
-    kind = FORMATS.get(file.suffix.lower())
-    if kind is None:
-        raise InputError(f"{file}: the name must end in {', '.join(FORMATS)}")
-    content = picture(make_figure(draw, title, height=height), kind)
-    with replacing(file, overwrite) as temporary:
-        temporary.write_bytes(content)
+    kind = _format(file)
+    write_figure(file, make_figure(draw, title, height=height), kind, overwrite=overwrite)

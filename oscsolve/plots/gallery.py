@@ -2,26 +2,38 @@
 
 from __future__ import annotations
 
+import contextlib
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from functools import partial
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 from matplotlib.axes import Axes
+from matplotlib.figure import Figure
 
 from oscsolve.errors import InputError
+from oscsolve.plots.choose import contrasting_rows, lightest_row
 from oscsolve.plots.echelle import frequency_echelle, period_echelle
 from oscsolve.plots.eigenfunction import displacement_plot, energy_plot
 from oscsolve.plots.figure import make_figure, picture
 from oscsolve.plots.inertia import inertia_plot
-from oscsolve.plots.kernel import rotation_kernel_plot
+from oscsolve.plots.kernel import rotation_kernel_plot, running_kernel_plot
 from oscsolve.plots.propagation import propagation_diagram
 from oscsolve.plots.spacing import spacing_plot
 from oscsolve.pulsation.modeset import ModeSet
 
 #: g modes of one degree from which folding periods shows something.
 _G_MODES = 6
+
+
+class _Plan(NamedTuple):
+    """A figure to be tried: title and caption, its panels from top to bottom, their height."""
+
+    title: str
+    caption: str
+    panels: tuple[Callable[[Axes], Any], ...]
+    height: float = 1.0
 
 
 @dataclass(frozen=True)
@@ -31,47 +43,50 @@ class Plate:
     Attributes
     ----------
     title, caption : what it shows, and how to read it
-    panels : functions that draw on an Axes, from top to bottom
-    height : of each panel, see `oscsolve.plots.figure.make_figure`
+    figure : the drawing
     """
 
     title: str
     caption: str
-    panels: tuple[Callable[[Axes], Any], ...]
-    height: float = 1.0
+    figure: Figure
 
     def svg(self) -> bytes:
         """The figure as an SVG file."""
-        return picture(make_figure(self.panels, height=self.height), "svg")
+        return picture(self.figure, "svg")
 
 
 def gallery(modes: ModeSet) -> list[Plate]:
-    """The figures that this list has something to show in; drawn when asked for.
+    """The figures that this list has something to show in.
 
     A figure that cannot be made of the list (no neighbouring p modes to fold with, no g modes) is
     left out.
+
+    Examples
+    --------
+    >>> import oscsolve
+    >>> from oscsolve import plots
+    >>> modes = oscsolve.solve_modes(oscsolve.polytrope(3), [0], (20, 300), unit="sigma2")
+    >>> [plate.title for plate in plots.gallery(modes)][:3]
+    ['Where waves propagate', 'Frequencies folded', 'Inertia']
     """
-    return [plate for plate in _candidates(modes) if _can_be_drawn(plate)]
+    plates = []
+    for plan in _candidates(modes):
+        with contextlib.suppress(InputError):
+            figure = make_figure(plan.panels, height=plan.height)
+            plates.append(Plate(plan.title, plan.caption, figure))
+    return plates
 
 
-def _can_be_drawn(plate: Plate) -> bool:
-    try:
-        make_figure(plate.panels, height=plate.height)
-    except InputError:
-        return False
-    return True
-
-
-def _candidates(modes: ModeSet) -> Iterator[Plate]:
+def _candidates(modes: ModeSet) -> Iterator[_Plan]:
     nonradial = [int(degree) for degree in modes.census.degree if degree > 0]
-    shown = tuple(nonradial[:2]) or (1,)
-    yield Plate(
+    yield _Plan(
         "Where waves propagate",
         "Sound waves run where the frequency exceeds both N and S_l, gravity waves where it lies "
-        "below both. Lines are modes, dots their nodes, dashes the ends of the band.",
-        (lambda axes: propagation_diagram(axes, modes.star, modes, degrees=shown),),
+        "below both. Lines are modes, strong where they travel, dots their nodes; the bar at the "
+        "right is the band.",
+        (lambda axes: propagation_diagram(axes, modes.star, modes),),
     )
-    yield Plate(
+    yield _Plan(
         "Frequencies folded",
         "p modes of one degree stand in a ridge; markers shrink with the inertia of a mode.",
         (lambda axes: frequency_echelle(axes, modes),),
@@ -79,19 +94,19 @@ def _candidates(modes: ModeSet) -> Iterator[Plate]:
     )
     lowest = min(nonradial, default=1)
     if np.count_nonzero((modes.degree == lowest) & (modes.n_g > 0)) >= _G_MODES:
-        yield Plate(
+        yield _Plan(
             f"Periods folded, l = {lowest}",
             "g modes of one degree stand in a ridge; sharp layers and p modes bend it.",
-            (lambda axes: period_echelle(axes, modes, lowest),),
+            (lambda axes: period_echelle(axes, modes, [lowest]),),
             1.35,
         )
     if np.count_nonzero(modes.n_g > 0) >= _G_MODES:
-        yield Plate(
+        yield _Plan(
             "Period spacing",
             "Steps between periods of consecutive orders; straight lines: the asymptotic values.",
             (lambda axes: spacing_plot(axes, modes),),
         )
-    yield Plate(
+    yield _Plan(
         "Inertia",
         "Modes of little inertia move the surface most for a given energy.",
         (lambda axes: inertia_plot(axes, modes),),
@@ -100,32 +115,28 @@ def _candidates(modes: ModeSet) -> Iterator[Plate]:
         yield from _of_single_modes(modes)
 
 
-def _of_single_modes(modes: ModeSet) -> Iterator[Plate]:
-    """Eigenfunctions of the lightest and the heaviest mode, kernels of four."""
-    positive = np.flatnonzero(modes.nu > 0.0)
-    nonradial = positive[modes.degree[positive] > 0]
-    pool = nonradial if nonradial.size else positive
-    if pool.size == 0:
+def _of_single_modes(modes: ModeSet) -> Iterator[_Plan]:
+    """Eigenfunctions and kernels of the lightest and the heaviest mode among some neighbours."""
+    nonradial = bool(np.any((modes.degree > 0) & (modes.sigma2 > 0.0)))
+    if not np.any(modes.sigma2 > 0.0):
         return
-    light = int(pool[np.argmin(modes.inertia[pool])])
-    heavy = int(pool[np.argmax(modes.inertia[pool])])
-    for row, which in ((light, "least"), (heavy, "greatest")):
+    rows = contrasting_rows(modes) if nonradial else [lightest_row(modes)]
+    for row, which in zip(rows, ("little", "much"), strict=False):
         name = f"l = {modes.degree[row]}, n = {modes.order[row]}, {modes.nu[row]:.6g} uHz"
-        yield Plate(
-            f"The mode of {which} inertia",
-            f"{name}: displacements times r sqrt(rho), and where the energy is.",
+        yield _Plan(
+            f"A mode of {which} inertia",
+            f"{name}: displacements times r sqrt(rho), and where the energy is; the dashed line is "
+            "the share of it inside.",
             (partial(displacement_plot, modes=modes, index=row),)
             + (partial(energy_plot, modes=modes, index=row),),
             0.75,
         )
-        if light == heavy:
-            break
-    if nonradial.size:
-        at = np.unique(np.linspace(0, nonradial.size - 1, 4).astype(int))
-        rows = [int(row) for row in nonradial[at]]
-        yield Plate(
+    if nonradial:
+        yield _Plan(
             "What rotational splittings sense",
-            "Rotation kernels of some modes: the splitting is beta times the mean of the rotation "
-            "rate weighted by the kernel.",
-            (lambda axes: rotation_kernel_plot(axes, modes, rows),),
+            "Rotation kernels of both modes, and the share of each that lies inside: a splitting "
+            "is beta times the mean of the rotation rate weighted by the kernel.",
+            (partial(rotation_kernel_plot, modes=modes, rows=rows),)
+            + (partial(running_kernel_plot, modes=modes, rows=rows),),
+            0.75,
         )
