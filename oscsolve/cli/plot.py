@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+import contextlib
+from collections.abc import Callable, Iterator, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TypeVar
 
@@ -207,7 +208,8 @@ def eigenfunction(path: Path, out: Path, overwrite: bool, named: tuple[str, ...]
     from oscsolve.plots.eigenfunction import displacement_plot, energy_plot
 
     modes = _load(path, eigenfunctions=True)
-    row = _row(modes, named[0]) if named else lightest_row(modes)
+    with _about(path):
+        row = _row(modes, named[0]) if named else lightest_row(modes)
     panels: list[_Panel] = [
         lambda axes: displacement_plot(axes, modes, row, coordinate=axis),
         lambda axes: energy_plot(axes, modes, row, coordinate=axis),
@@ -238,13 +240,19 @@ def kernel(
     """Kernels of some modes: what splittings say of rotation, or frequencies of the structure."""
     _check(out, overwrite, path)
     from oscsolve.plots import kernel as drawn
-    from oscsolve.plots.choose import contrasting_rows
+    from oscsolve.plots.choose import contrasting_rows, lightest_row
 
     modes = _load(path, eigenfunctions=True)
     if len(named) > _MOST:
         raise click.UsageError(f"this figure shows up to {_MOST} modes; got {len(named)}")
-    rows = [_row(modes, text) for text in named] if named else contrasting_rows(modes)
     pair = _KERNELS[quantity]
+    with _about(path):
+        if named:
+            rows = [_row(modes, text) for text in named]
+        elif pair is None or modes.degree.any():
+            rows = contrasting_rows(modes)
+        else:
+            rows = [lightest_row(modes)]
     panels: list[_Panel]
     if pair is None:
         panels = [
@@ -286,6 +294,15 @@ def _load(
     return modes.only(degrees)
 
 
+@contextlib.contextmanager
+def _about(path: Path) -> Iterator[None]:
+    """Name the file in what is said of its list."""
+    try:
+        yield
+    except InputError as error:
+        raise InputError(f"{path}: {error}") from error
+
+
 def _row(modes: ModeSet, text: str) -> int:
     """Row of a mode that was named."""
     try:
@@ -321,9 +338,7 @@ def _save(
 ) -> int:
     from oscsolve.plots.figure import make_figure, write_figure
 
-    try:
+    with _about(path):
         figure = make_figure(panels, title, height=height)
-    except InputError as error:
-        raise InputError(f"{path}: {error}") from error
     write_figure(out, figure, overwrite=overwrite)
     return 0

@@ -160,8 +160,12 @@ def _draw_structure(
             axes.fill_between(place, bottom, least, color=FILLS["g"], lw=0.0, zorder=0)
             axes.fill_between(place, most, top, color=FILLS["p"], lw=0.0, zorder=0)
     lowest = degrees[0] if degrees else 1
+    stable = bool(np.any(buoyancy > bottom))
+    handles = handles if stable else handles[1:]
     handles += [
-        Patch(color=fill, label=rf"{kind} cavity ($\ell={lowest}$)") for kind, fill in FILLS.items()
+        Patch(color=fill, label=rf"{kind} cavity ($\ell={lowest}$)")
+        for kind, fill in FILLS.items()
+        if kind == "p" or stable
     ]
     zones = convective_zones(star)
     for zone in zones:

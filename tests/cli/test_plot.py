@@ -119,7 +119,18 @@ def test_lists_without_eigenfunctions_or_modes_are_refused(tmp_path, listed, ref
     oscsolve.write_model(modes.star, model)
     line = refused("plot", "propagation", model, "--mode", "1,1", "-o", tmp_path / "a.png")
     assert "a model holds no modes" in line
+    radial = tmp_path / "radial.h5"
+    oscsolve.save_modes(modes.only([0]), radial)
+    line = refused("plot", "kernel", radial, "-o", tmp_path / "a.png")
+    assert "radial.h5: the list holds no nonradial mode" in line
     assert not (tmp_path / "a.png").exists()
+
+
+def test_radial_modes_have_kernels_of_the_structure(run, tmp_path, listed):
+    radial = tmp_path / "radial.h5"
+    oscsolve.save_modes(oscsolve.load_modes(listed).only([0]), radial)
+    done = run("plot", "kernel", radial, "--of", "c2", "-o", tmp_path / "a.svg")
+    assert done.status == 0 and "l = 0, n = " in done.err
 
 
 def test_nothing_is_overwritten_unasked(run, tmp_path, listed, refused):

@@ -65,6 +65,13 @@ def test_a_bare_model_and_a_list_without_eigenfunctions_have_one_too(star_n3, ax
     assert r"$\ell=1$ modes" in key_texts(other) and "p node" not in key_texts(other)
 
 
+def test_a_star_without_stable_layers_has_no_g_cavity(axes):
+    plots.propagation_diagram(axes, oscsolve.uniform_sphere())
+    texts = key_texts(axes)
+    assert "$N$" not in texts and "g cavity ($\\ell=1$)" not in texts
+    assert "p cavity ($\\ell=1$)" in texts and "convective" in texts
+
+
 def test_echelle_folds_p_modes_and_keeps_their_frequencies(n3_list, axes):
     plots.frequency_echelle(axes, n3_list)
     width = typical_separation(n3_list)
